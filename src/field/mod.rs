@@ -1,0 +1,17 @@
+//! Fields on a regular grid: vectors, scalars, gradients, and reading them between the nodes.
+//!
+//! Arrays have shape (ny, nx); row 0 is the lowest row, so that index (j, i) sits at
+//! x = x0 + i dx, y = y0 + j dy. A cell without a value holds NaN. Nothing here knows where a
+//! field came from, and nothing here finds eddies.
+
+mod gradient;
+mod grid;
+mod sample;
+mod scalar;
+mod vector;
+
+pub use gradient::{Gradient, Scheme};
+pub use grid::{FieldError, Grid};
+pub use sample::Trace;
+pub use scalar::ScalarField;
+pub use vector::{Status, VectorField};

@@ -1,0 +1,4 @@
+//! Under construction.
+/// Values along a line.
+#[derive(Clone, Debug)]
+pub struct Trace;
