@@ -1,0 +1,21 @@
+//! The built-ins, one file a room of the crate.
+//!
+//! Each file has one function that writes the room's records, documentation and closure
+//! together. Nothing is computed here: a closure calls a kernel and hands its answer on.
+
+mod core;
+mod lists;
+mod mathematics;
+mod quantity;
+
+use super::draft::Room;
+
+type Write = fn(&mut Room);
+
+/// Every room with the function that writes its records, in the order help lists them.
+pub(super) const ROOMS: [(&str, Write); 4] = [
+    ("script", core::records),
+    ("numbers", mathematics::records),
+    ("lists and text", lists::records),
+    ("measured values", quantity::records),
+];

@@ -1,0 +1,58 @@
+//! One call of a built-in: what it may use of the run it belongs to.
+
+use std::path::{Path, PathBuf};
+use std::rc::Rc;
+
+use super::fault::Fault;
+use super::registry::Registry;
+use super::session::Session;
+use crate::task::Task;
+
+/// Given to a built-in that asks for it: progress, cancellation, files, and what may be printed.
+#[derive(Clone)]
+pub struct Call {
+    session: Rc<Session>,
+    registry: Rc<Registry>,
+}
+
+impl Call {
+    pub(super) fn new(session: Rc<Session>, registry: Rc<Registry>) -> Self {
+        Self { session, registry }
+    }
+
+    /// The handle a kernel reports through and is cancelled by.
+    pub fn task(&self) -> Task {
+        self.session.task()
+    }
+
+    /// The run this call belongs to.
+    pub fn session(&self) -> &Session {
+        &self.session
+    }
+
+    /// Every built-in there is.
+    pub fn registry(&self) -> &Registry {
+        &self.registry
+    }
+
+    /// The folder relative paths are read from.
+    pub fn base(&self) -> &Path {
+        self.session.sandbox().start()
+    }
+
+    /// The path to read `path` from.
+    ///
+    /// # Errors
+    /// A path outside the folders a script may read.
+    pub fn readable(&self, path: &str) -> Result<PathBuf, Fault> {
+        Ok(self.session.sandbox().readable(Path::new(path))?)
+    }
+
+    /// The path to write `path` to, with its folder made, and noted as written.
+    ///
+    /// # Errors
+    /// A path outside the output folder, or a folder that cannot be made.
+    pub fn writable(&self, path: &str) -> Result<PathBuf, Fault> {
+        Ok(self.session.sandbox().writable(Path::new(path))?)
+    }
+}
