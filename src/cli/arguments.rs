@@ -29,7 +29,7 @@ Exit codes: 0 done, 1 the script failed, 2 wrong command line, 130 interrupted."
     after_help = AFTER,
     override_usage = "kolk [OPTIONS]            start the prompt\n       kolk COMMAND ...          see below; kolk help COMMAND says more",
     max_term_width = 98,
-    help_template = "{about}\n\nUsage: {usage}\n\nCommands:\n{subcommands}\n\nOptions:\n{options}\n\n{after-help}\n"
+    help_template = "{about}\n\nUsage: {usage}\n\nCommands:\n{subcommands}\n\nOptions:\n{options}{after-help}\n"
 )]
 pub(super) struct Arguments {
     #[command(flatten)]
@@ -65,7 +65,7 @@ pub(super) enum Command {
 
 /// `kolk run`.
 #[derive(Args, Debug)]
-#[command(disable_help_flag = true)]
+#[command(disable_help_flag = true, override_usage = "kolk run FILE [OPTIONS]")]
 pub(super) struct Run {
     /// The script.
     #[arg(value_name = "FILE", required_unless_present = "help")]

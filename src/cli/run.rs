@@ -78,7 +78,7 @@ fn help_of_the_command() -> Outcome {
     let mut command = Arguments::command();
     command.build();
     if let Some(run) = command.find_subcommand_mut("run") {
-        say(&run.render_long_help().to_string());
+        say(&run.render_help().to_string());
     }
     Outcome::Done
 }

@@ -83,10 +83,8 @@ fn show_step(current: &mut Option<Bar>, step: &Step) {
         if let Some(old) = current.take() {
             old.drawn.finish_and_clear();
         }
-        let drawn = ProgressBar::with_draw_target(
-            Some(step.total as u64),
-            ProgressDrawTarget::stderr(),
-        );
+        let drawn =
+            ProgressBar::with_draw_target(Some(step.total as u64), ProgressDrawTarget::stderr());
         // The template is ours and right; a bar without it would do too.
         if let Ok(style) =
             ProgressStyle::with_template("{wide_bar:.cyan} {pos}/{len} {msg} {elapsed} left {eta}")

@@ -73,7 +73,9 @@ fn talk(mut cells: Cells, terminal: &Terminal) -> Outcome {
             }
             Err(ReadlineError::Interrupted) => {}
             Err(ReadlineError::Eof) => return Outcome::Done,
-            Err(error) => return terminal.misused(&format!("this terminal cannot be used: {error}")),
+            Err(error) => {
+                return terminal.misused(&format!("this terminal cannot be used: {error}"));
+            }
         }
     }
 }
@@ -93,9 +95,7 @@ fn with_brackets(text: &str) -> String {
     let trimmed = text.trim();
     match trimmed.strip_prefix("help") {
         Some("") => "help()".to_owned(),
-        Some(rest)
-            if rest.starts_with(' ') && !rest.contains(['(', '"', '=', '\n', ';', '`']) =>
-        {
+        Some(rest) if rest.starts_with(' ') && !rest.contains(['(', '"', '=', '\n', ';', '`']) => {
             format!("help(\"{}\")", rest.trim())
         }
         _ => text.to_owned(),
@@ -119,8 +119,10 @@ fn known_names(cells: &Cells) -> Names {
     let mut free = owned(registry.names());
     free.extend(cells.variables().into_iter().map(|(name, _)| name));
     free.extend(
-        ["let", "const", "for", "while", "if", "else", "return", "import", "true", "false"]
-            .map(str::to_owned),
+        [
+            "let", "const", "for", "while", "if", "else", "return", "import", "true", "false",
+        ]
+        .map(str::to_owned),
     );
     Names {
         free,
@@ -130,7 +132,11 @@ fn known_names(cells: &Cells) -> Names {
 
 /// `kolk/history` in the user's data folder, which is made when it is not there.
 fn history_file() -> Option<PathBuf> {
-    let folder = |name: &str| std::env::var_os(name).filter(|v| !v.is_empty()).map(PathBuf::from);
+    let folder = |name: &str| {
+        std::env::var_os(name)
+            .filter(|v| !v.is_empty())
+            .map(PathBuf::from)
+    };
     let data = folder("XDG_DATA_HOME")
         .or_else(|| folder("APPDATA"))
         .or_else(|| folder("HOME").map(|home| home.join(".local/share")))?;
@@ -146,7 +152,10 @@ mod tests {
     #[test]
     fn help_may_be_asked_without_brackets() {
         assert_eq!(with_brackets("help"), "help()");
-        assert_eq!(with_brackets("help vector field "), "help(\"vector field\")");
+        assert_eq!(
+            with_brackets("help vector field "),
+            "help(\"vector field\")"
+        );
         assert_eq!(with_brackets("help(\"x\")"), "help(\"x\")");
         assert_eq!(with_brackets("helper + 1"), "helper + 1");
         assert_eq!(with_brackets("help = 3"), "help = 3");

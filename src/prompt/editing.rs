@@ -49,7 +49,9 @@ fn completions(line: &str, position: usize, names: &Names) -> (usize, Vec<String
     let before = line.get(..position).unwrap_or(line);
     let start = before
         .rfind(|c: char| !(c.is_alphanumeric() || c == '_'))
-        .map_or(0, |i| i + before[i..].chars().next().map_or(1, char::len_utf8));
+        .map_or(0, |i| {
+            i + before[i..].chars().next().map_or(1, char::len_utf8)
+        });
     let word = &before[start..];
     let pool = if before[..start].ends_with('.') {
         &names.after_a_dot
@@ -96,7 +98,11 @@ mod tests {
     #[test]
     fn names_after_a_dot_are_those_of_methods() {
         let names = Names {
-            free: vec!["flow".to_owned(), "floor".to_owned(), "gradient_of".to_owned()],
+            free: vec![
+                "flow".to_owned(),
+                "floor".to_owned(),
+                "gradient_of".to_owned(),
+            ],
             after_a_dot: vec!["gradient".to_owned(), "speed".to_owned()],
         };
         let at_end = |line: &str| completions(line, line.len(), &names);

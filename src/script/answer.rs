@@ -72,7 +72,10 @@ impl<T: Answer> Answer for Vec<T> {
     }
 
     fn give(self) -> Result<Dynamic, Fault> {
-        let items = self.into_iter().map(Answer::give).collect::<Result<Array, _>>()?;
+        let items = self
+            .into_iter()
+            .map(Answer::give)
+            .collect::<Result<Array, _>>()?;
         Ok(Dynamic::from_array(items))
     }
 }

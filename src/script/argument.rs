@@ -57,7 +57,10 @@ pub trait Argument: Sized + 'static {
 fn unfit(wanted: &str, given: Option<&Dynamic>) -> Fault {
     let wanted = with_article(wanted);
     match given {
-        Some(value) => Fault::new(format!("takes {wanted}, not {}", with_article(kind_name(value)))),
+        Some(value) => Fault::new(format!(
+            "takes {wanted}, not {}",
+            with_article(kind_name(value))
+        )),
         None => Fault::new(format!("takes {wanted}")),
     }
 }
@@ -68,9 +71,7 @@ fn taken<T>(
     read: impl FnOnce(&Dynamic) -> Option<T>,
 ) -> Result<T, Fault> {
     let given = given.map(|value| &*value);
-    given
-        .and_then(read)
-        .ok_or_else(|| unfit(wanted, given))
+    given.and_then(read).ok_or_else(|| unfit(wanted, given))
 }
 
 impl Argument for f64 {
@@ -116,7 +117,8 @@ impl Argument for usize {
 
     fn take(given: Option<&mut Dynamic>, _: &Call) -> Result<Self, Fault> {
         let n = taken("whole number", given, whole)?;
-        usize::try_from(n).map_err(|_| Fault::new(format!("takes a whole number from 0 up, not {n}")))
+        usize::try_from(n)
+            .map_err(|_| Fault::new(format!("takes a whole number from 0 up, not {n}")))
     }
 }
 
@@ -141,7 +143,10 @@ impl Argument for String {
 
     fn take(given: Option<&mut Dynamic>, _: &Call) -> Result<Self, Fault> {
         taken("text", given, |value| {
-            value.as_immutable_string_ref().ok().map(|text| text.to_string())
+            value
+                .as_immutable_string_ref()
+                .ok()
+                .map(|text| text.to_string())
         })
     }
 }
@@ -163,7 +168,9 @@ impl Argument for Map {
     }
 
     fn take(given: Option<&mut Dynamic>, _: &Call) -> Result<Self, Fault> {
-        taken("map", given, |value| value.as_map_ref().ok().map(|map| map.clone()))
+        taken("map", given, |value| {
+            value.as_map_ref().ok().map(|map| map.clone())
+        })
     }
 }
 
@@ -199,7 +206,10 @@ impl<T: Argument> Argument for Vec<T> {
             .map(|(i, item)| {
                 T::take(Some(item), call).map_err(|fault| {
                     let inner = fault.message().trim_start_matches("takes ");
-                    Fault::new(format!("takes {}; item {i} should be {inner}", with_article(&wanted)))
+                    Fault::new(format!(
+                        "takes {}; item {i} should be {inner}",
+                        with_article(&wanted)
+                    ))
                 })
             })
             .collect()
@@ -259,9 +269,11 @@ impl<T: Options + 'static> Argument for Optional<T> {
         match given {
             None => Ok(Optional(T::default())),
             Some(value) => {
-                let map = taken("map of options, such as #{ key: value }", Some(value), |value| {
-                    value.as_map_ref().ok().map(|map| map.clone())
-                })?;
+                let map = taken(
+                    "map of options, such as #{ key: value }",
+                    Some(value),
+                    |value| value.as_map_ref().ok().map(|map| map.clone()),
+                )?;
                 read(&map).map(Optional)
             }
         }

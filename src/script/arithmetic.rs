@@ -12,7 +12,7 @@
 use std::any::TypeId;
 use std::cmp::Ordering;
 
-use rhai::{Dynamic, Engine, EvalAltResult, FLOAT, INT};
+use rhai::{Array, Dynamic, Engine, EvalAltResult, FLOAT, INT};
 
 use super::answer::Answer;
 use super::argument::{Argument, Shape};
@@ -34,8 +34,17 @@ impl Plain {
     /// The number without its sign.
     pub(super) fn abs(self) -> Self {
         match self {
-            Plain::Whole(n) => n.checked_abs().map_or(Plain::Float((n as f64).abs()), Plain::Whole),
+            Plain::Whole(n) => n
+                .checked_abs()
+                .map_or(Plain::Float((n as f64).abs()), Plain::Whole),
             Plain::Float(x) => Plain::Float(x.abs()),
+        }
+    }
+
+    fn float(self) -> f64 {
+        match self {
+            Plain::Whole(n) => n as f64,
+            Plain::Float(x) => x,
         }
     }
 
@@ -123,7 +132,10 @@ fn compare_mixed(n: INT, x: FLOAT) -> Option<Ordering> {
 /// Division by zero.
 pub(super) fn divide(a: f64, b: f64) -> Result<f64, Fault> {
     if b == 0.0 {
-        return Err(Fault::new(format!("division by zero: {} / 0", number_text(a))));
+        return Err(Fault::new(format!(
+            "division by zero: {} / 0",
+            number_text(a)
+        )));
     }
     Ok(a / b)
 }
@@ -136,11 +148,7 @@ fn power(a: Plain, b: Plain) -> Result<Dynamic, Fault> {
     {
         return Ok(Dynamic::from_int(result));
     }
-    let float = |x| match x {
-        Plain::Whole(n) => n as f64,
-        Plain::Float(x) => x,
-    };
-    let (base, exponent) = (float(a), float(b));
+    let (base, exponent) = (a.float(), b.float());
     if base == 0.0 && exponent < 0.0 {
         return Err(Fault::new("division by zero: 0 to a negative power"));
     }
@@ -165,13 +173,60 @@ pub(super) fn register(engine: &mut Engine) {
             let float = |x: &Dynamic| number(x).unwrap_or(f64::NAN);
             divide(float(a), float(b)).map(Dynamic::from_float)
         });
-        changing(engine, "**", types, |a, b| power(Plain::of(a), Plain::of(b)));
+        changing(engine, "**", types, |a, b| {
+            power(Plain::of(a), Plain::of(b))
+        });
+        changing(engine, "%", types, |a, b| {
+            remainder(Plain::of(a), Plain::of(b))
+        });
         comparing(engine, "==", types, |o| o == Some(Ordering::Equal));
         comparing(engine, "!=", types, |o| o != Some(Ordering::Equal));
         comparing(engine, "<", types, |o| o == Some(Ordering::Less));
         comparing(engine, ">", types, |o| o == Some(Ordering::Greater));
         comparing(engine, "<=", types, |o| o.is_some_and(Ordering::is_le));
         comparing(engine, ">=", types, |o| o.is_some_and(Ordering::is_ge));
+    }
+    engine.register_raw_fn("sort", [TypeId::of::<Array>()], |_, args| {
+        sort(args[0]).map_err(Fault::into_error)
+    });
+}
+
+/// The remainder of a division, with the sign of the left side.
+fn remainder(a: Plain, b: Plain) -> Result<Dynamic, Fault> {
+    if let (Plain::Whole(a), Plain::Whole(b)) = (a, b)
+        && b != 0
+    {
+        return Ok(Dynamic::from_int(a.wrapping_rem(b)));
+    }
+    let (a, b) = (a.float(), b.float());
+    if b == 0.0 {
+        return Err(Fault::new(format!(
+            "division by zero: {} % 0",
+            number_text(a)
+        )));
+    }
+    Ok(Dynamic::from_float(a % b))
+}
+
+/// Sorts a list of numbers, whole and float together, or of texts. NaN comes last.
+fn sort(list: &mut Dynamic) -> Result<(), Fault> {
+    let Some(mut list) = list.write_lock::<Array>() else {
+        return Ok(());
+    };
+    if list.iter().all(|item| number(item).is_some()) {
+        list.sort_by(|a, b| {
+            let (a, b) = (Plain::of(a), Plain::of(b));
+            compare(a, b).unwrap_or_else(|| a.float().is_nan().cmp(&b.float().is_nan()))
+        });
+        Ok(())
+    } else if list.iter().all(Dynamic::is_string) {
+        list.sort_by_cached_key(|item| item.clone().into_string().unwrap_or_default());
+        Ok(())
+    } else {
+        Err(
+            Fault::new("only a list of numbers or of texts has an order of its own")
+                .hint("say which comes first: list.sort(|a, b| a.x < b.x)"),
+        )
     }
 }
 
@@ -192,7 +247,12 @@ fn changing(
     });
 }
 
-fn comparing(engine: &mut Engine, op: &str, types: [TypeId; 2], holds: fn(Option<Ordering>) -> bool) {
+fn comparing(
+    engine: &mut Engine,
+    op: &str,
+    types: [TypeId; 2],
+    holds: fn(Option<Ordering>) -> bool,
+) {
     engine.register_raw_fn(op, types, move |_, args| {
         Ok(holds(compare(Plain::of(args[0]), Plain::of(args[1]))))
     });
@@ -234,7 +294,16 @@ mod tests {
     #[test]
     fn what_is_no_number_is_an_error() {
         let engine = engine();
-        for code in ["1 / 0", "1.0 / 0", "0 / 0.0", "let x = 1; x /= 0", "0 ** -1", "(-8) ** 0.5"] {
+        for code in [
+            "1 / 0",
+            "1.0 / 0",
+            "0 / 0.0",
+            "let x = 1; x /= 0",
+            "7 % 0",
+            "7.5 % 0",
+            "0 ** -1",
+            "(-8) ** 0.5",
+        ] {
             assert!(engine.eval::<Dynamic>(code).is_err(), "{code}");
         }
     }

@@ -143,12 +143,7 @@ impl<'a, S> Draft<'a, S> {
     }
 
     /// The next parameter: its name, the unit of a number ("" for anything else), its meaning.
-    pub fn input(
-        mut self,
-        name: &'static str,
-        unit: &'static str,
-        meaning: &'static str,
-    ) -> Self {
+    pub fn input(mut self, name: &'static str, unit: &'static str, meaning: &'static str) -> Self {
         self.inputs.push((name, unit, meaning));
         self
     }
@@ -254,9 +249,15 @@ impl Draft<'_, Free> {
         let names = self.settle(F::shapes(), F::outcome());
         let signatures = self
             .counts()
-            .map(|n| (self.record.name.to_owned(), vec![TypeId::of::<Dynamic>(); n]))
+            .map(|n| {
+                (
+                    self.record.name.to_owned(),
+                    vec![TypeId::of::<Dynamic>(); n],
+                )
+            })
             .collect();
-        let run = move |_: Option<&Dynamic>, given: super::bind_fn::Given<'_, '_>| closure.run(given);
+        let run =
+            move |_: Option<&Dynamic>, given: super::bind_fn::Given<'_, '_>| closure.run(given);
         self.record.registration = Registration::closure(signatures, names, run, false);
         self.room.records.push(self.record);
     }

@@ -1,6 +1,10 @@
 //! What a built-in says when it cannot do what was asked.
 
+use std::sync::Arc;
+
 use rhai::{Dynamic, EvalAltResult, Position};
+
+use super::kind::Kind;
 
 /// A message, and where one is known a hint and the option it is about.
 ///
@@ -50,13 +54,27 @@ impl Fault {
     }
 
     pub(super) fn into_error(self) -> Box<EvalAltResult> {
-        EvalAltResult::ErrorRuntime(Dynamic::from(self), Position::NONE).into()
+        EvalAltResult::ErrorRuntime(Dynamic::from(Arc::new(self)), Position::NONE).into()
     }
 }
 
 impl<E: std::error::Error> From<E> for Fault {
-    /// The error's own message.
+    /// The error's own message; what a unit mismatch advises becomes the hint.
     fn from(error: E) -> Self {
-        Fault::new(error.to_string())
+        let text = error.to_string();
+        match text.split_once(" do not go together: ") {
+            Some((units, advice)) => Fault::new(format!("{units} do not go together")).hint(advice),
+            None => Fault::new(text),
+        }
+    }
+}
+
+impl Kind for Fault {
+    const NAME: &'static str = "error";
+    const ABOUT: &'static str =
+        "What a built-in could not do, as `catch (e)` receives it; it prints as its message.";
+
+    fn show(&self) -> String {
+        self.message.clone()
     }
 }

@@ -34,7 +34,9 @@ pub fn help_for(registry: &Registry, asked: &str) -> Help {
     if found.is_empty() {
         let hint = super::wording::nearest(asked, registry.names().into_iter())
             .map_or_else(String::new, |name| format!(" Did you mean `{name}`?"));
-        return Help(format!("Nothing about \"{asked}\".{hint} help() lists everything."));
+        return Help(format!(
+            "Nothing about \"{asked}\".{hint} help() lists everything."
+        ));
     }
     Help(format!("About \"{asked}\":\n{}", lines(&found)))
 }
@@ -51,9 +53,8 @@ pub(super) fn kind_page(registry: &Registry, kind: &KindRecord) -> Help {
 
 /// The first page: every room with its names.
 pub fn overview(registry: &Registry) -> Help {
-    let mut text = String::from(
-        "help(\"name\"), help(value) or help(\"words to search\") says more.\n",
-    );
+    let mut text =
+        String::from("help(\"name\"), help(value) or help(\"words to search\") says more.\n");
     let mut rooms: Vec<&str> = Vec::new();
     for record in registry.records() {
         if !rooms.contains(&record.room) {
@@ -80,10 +81,19 @@ pub fn overview(registry: &Registry) -> Help {
 fn page(record: &Record) -> String {
     let mut text = format!("{}\n{}", record.usage(), wrapped(record.about, 2));
     if let (Some(kind), true) = (record.subject, record.form == Form::Function) {
-        let _ = writeln!(text, "  takes {}{}", with_article(kind), in_unit(record.subject_unit));
+        let _ = writeln!(
+            text,
+            "  takes {}{}",
+            with_article(kind),
+            in_unit(record.subject_unit)
+        );
     }
     for input in record.inputs.iter().filter(|i| i.shape.options.is_none()) {
-        let left_out = if input.shape.optional { ", may be left out" } else { "" };
+        let left_out = if input.shape.optional {
+            ", may be left out"
+        } else {
+            ""
+        };
         let _ = writeln!(
             text,
             "  {}: {}{}{left_out}. {}",
@@ -162,7 +172,12 @@ fn sentence(text: &str) -> String {
 /// One line a record: how it is written, then what it does.
 fn lines(records: &[&Record]) -> String {
     let usages: Vec<String> = records.iter().map(|r| r.usage()).collect();
-    let width = usages.iter().map(|u| u.chars().count()).max().unwrap_or(0).min(44);
+    let width = usages
+        .iter()
+        .map(|u| u.chars().count())
+        .max()
+        .unwrap_or(0)
+        .min(44);
     let mut text = String::new();
     for (record, usage) in records.iter().zip(usages) {
         let _ = writeln!(text, "  {usage:width$}  {}", first_sentence(record.about));
@@ -196,4 +211,3 @@ fn wrapped(text: &str, indent: usize) -> String {
     }
     lines
 }
-

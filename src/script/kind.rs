@@ -165,7 +165,9 @@ pub(super) fn show(value: &Dynamic) -> String {
         return show_list(&list);
     }
     if let Ok(map) = value.as_map_ref() {
-        let entries = map.iter().map(|(key, value)| format!("{key}: {}", show(value)));
+        let entries = map
+            .iter()
+            .map(|(key, value)| format!("{key}: {}", show(value)));
         return format!("#{{{}}}", entries.collect::<Vec<_>>().join(", "));
     }
     if value.is_unit() {
@@ -181,9 +183,7 @@ pub(super) fn show(value: &Dynamic) -> String {
 fn show_list(list: &Array) -> String {
     let items: Vec<String> = list.iter().map(show).collect();
     let one_line = format!("[{}]", items.join(", "));
-    let plain = |value: &Dynamic| {
-        KNOWN.with_borrow(|known| !known.contains_key(&value.type_id()))
-    };
+    let plain = |value: &Dynamic| KNOWN.with_borrow(|known| !known.contains_key(&value.type_id()));
     if one_line.chars().count() <= 76 || list.iter().all(plain) {
         one_line
     } else {
@@ -191,13 +191,27 @@ fn show_list(list: &Array) -> String {
             .iter()
             .enumerate()
             .map(|(i, item)| format!("  {i}: {}", item.replace('\n', "\n     ")));
-        format!("{} items:\n{}", items.len(), lines.collect::<Vec<_>>().join("\n"))
+        format!(
+            "{} items:\n{}",
+            items.len(),
+            lines.collect::<Vec<_>>().join("\n")
+        )
     }
 }
 
 /// `a number`, `an eddy`, `text`.
 pub(super) fn with_article(kind: &str) -> String {
-    let bare = ["text", "true", "nothing", "numbers", "one of", "anything"];
+    let bare = [
+        "text",
+        "true",
+        "nothing",
+        "numbers",
+        "one of",
+        "anything",
+        "something",
+        "a ",
+        "an ",
+    ];
     if bare.iter().any(|word| kind.starts_with(word)) {
         kind.to_owned()
     } else if kind.starts_with(['a', 'e', 'i', 'o', 'u']) {

@@ -8,10 +8,9 @@ use rhai::packages::{
     BasicArrayPackage, BasicMapPackage, BasicMathPackage, CorePackage, LogicPackage,
     MoreStringPackage, Package,
 };
-use rhai::{AST, Dynamic, Engine, EvalAltResult, FnPtr, Module, Position, Scope};
+use rhai::{AST, Dynamic, Engine, EvalAltResult, FnPtr, Module, Scope};
 
 use super::arithmetic;
-use super::fault::Fault;
 use super::modules::Modules;
 use super::number::number_text;
 use super::record::Form;
@@ -19,7 +18,6 @@ use super::registry::Registry;
 use super::session::Session;
 use super::settings::{DeclaredSetting, declared};
 use super::trouble::Trouble;
-use super::wording::nearest;
 
 /// Functions may call one another this deep; the stack of [`on_a_big_stack`] holds that.
 const CALL_DEPTH: usize = 400;
@@ -178,7 +176,7 @@ pub(super) fn bare_engine() -> Engine {
     arithmetic::register(&mut engine);
     print_numbers(&mut engine);
     name_plain_kinds(&mut engine);
-    missing_keys_are_errors(&mut engine);
+    engine.set_fail_on_invalid_map_property(true);
     engine
 }
 
@@ -186,8 +184,12 @@ fn print_numbers(engine: &mut Engine) {
     for name in ["print", "to_string", "to_debug", "debug"] {
         engine.register_fn(name, |x: f64| number_text(x));
     }
-    engine.register_fn("+", |text: &str, x: f64| format!("{text}{}", number_text(x)));
-    engine.register_fn("+", |x: f64, text: &str| format!("{}{text}", number_text(x)));
+    engine.register_fn("+", |text: &str, x: f64| {
+        format!("{text}{}", number_text(x))
+    });
+    engine.register_fn("+", |x: f64, text: &str| {
+        format!("{}{text}", number_text(x))
+    });
 }
 
 fn name_plain_kinds(engine: &mut Engine) {
@@ -200,26 +202,6 @@ fn name_plain_kinds(engine: &mut Engine) {
     engine.register_type_with_name::<rhai::Map>("map");
     engine.register_type_with_name::<FnPtr>("function");
     engine.register_type_with_name::<()>("nothing");
-    engine.register_type_with_name::<Fault>("error");
-    for name in ["to_string", "to_debug"] {
-        engine.register_fn(name, |fault: &mut Fault| fault.message().to_owned());
-    }
-}
-
-fn missing_keys_are_errors(engine: &mut Engine) {
-    engine.set_fail_on_invalid_map_property(true);
-    engine.on_map_missing_property(|map, key, _| {
-        let fault = Fault::new(format!("the map has no key `{key}`"));
-        let fault = match nearest(key, map.keys().map(|k| k.as_str())) {
-            Some(name) => fault.hint(format!("did you mean `{name}`?")),
-            None if map.is_empty() => fault.hint("the map is empty"),
-            None => {
-                let keys: Vec<_> = map.keys().map(|k| k.as_str()).collect();
-                fault.hint(format!("its keys are: {}", keys.join(", ")))
-            }
-        };
-        Err(EvalAltResult::ErrorRuntime(Dynamic::from(fault), Position::NONE).into())
-    });
 }
 
 /// Constants, and every function by its name, so that `list.map(sqrt)` works.
@@ -228,7 +210,11 @@ fn named_values(registry: &Registry) -> Module {
     for (name, value) in registry.constants() {
         module.set_var(name, value);
     }
-    for record in registry.records().iter().filter(|r| r.form == Form::Function) {
+    for record in registry
+        .records()
+        .iter()
+        .filter(|r| r.form == Form::Function)
+    {
         if let Ok(function) = FnPtr::new(record.name) {
             module.set_var(record.name, function);
         }

@@ -73,14 +73,21 @@ impl Modules {
     /// The path from the start folder where the file lies below it, the whole path elsewhere.
     fn short_name(&self, file: &Path) -> String {
         let start = self.session.sandbox().start();
-        file.strip_prefix(start).unwrap_or(file).display().to_string()
+        file.strip_prefix(start)
+            .unwrap_or(file)
+            .display()
+            .to_string()
     }
 
     fn cycle(&self, file: &Path) -> Option<String> {
         let loading = self.loading.borrow();
         let from = loading.iter().position(|f| f == file)?;
         let way = loading[from..].iter().chain([&loading[from]]);
-        Some(way.map(|f| self.short_name(f)).collect::<Vec<_>>().join(" -> "))
+        Some(
+            way.map(|f| self.short_name(f))
+                .collect::<Vec<_>>()
+                .join(" -> "),
+        )
     }
 }
 

@@ -272,9 +272,6 @@ mod tests {
             message("#{overlap: \"half\"}"),
             "option `overlap` takes a number (fraction), not \"half\""
         );
-        assert_eq!(
-            message("#{scheme: 3}"),
-            "option `scheme` takes text, not 3"
-        );
+        assert_eq!(message("#{scheme: 3}"), "option `scheme` takes text, not 3");
     }
 }

@@ -74,7 +74,11 @@ impl Settings {
     /// The first such name.
     pub fn check(&self, declared: &[DeclaredSetting]) -> Result<(), SettingError> {
         let names = || declared.iter().map(|d| d.name.as_str());
-        match self.0.keys().find(|given| !names().any(|n| n == given.as_str())) {
+        match self
+            .0
+            .keys()
+            .find(|given| !names().any(|n| n == given.as_str()))
+        {
             None => Ok(()),
             Some(given) => {
                 let list = names().collect::<Vec<_>>().join(", ");
@@ -179,9 +183,8 @@ mod tests {
     #[test]
     fn a_value_of_another_kind_names_the_setting() {
         let given = settings(&["n=3.5", "x=fast", "on=yes"]);
-        let message = |name: &str, default: Dynamic| {
-            given.value(name, &default).unwrap_err().to_string()
-        };
+        let message =
+            |name: &str, default: Dynamic| given.value(name, &default).unwrap_err().to_string();
         assert_eq!(
             message("n", 1_i64.into()),
             "the setting `n` takes a whole number (its default is 1), not `3.5`"
@@ -205,7 +208,10 @@ mod tests {
         assert_eq!(declared[0].meaning, "how many pairs");
         assert!(settings(&["pairs=3"]).check(&declared).is_ok());
         assert_eq!(
-            settings(&["pair=3"]).check(&declared).unwrap_err().to_string(),
+            settings(&["pair=3"])
+                .check(&declared)
+                .unwrap_err()
+                .to_string(),
             "the script has no setting `pair`; did you mean `pairs`?"
         );
     }

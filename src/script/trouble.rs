@@ -3,9 +3,9 @@
 use ariadne::{Color, Config, Label, Report, ReportKind, Source};
 use rhai::{EvalAltResult, Position};
 
+use super::Registry;
 use super::session::Session;
 use super::wording::{Wording, say};
-use super::Registry;
 
 /// A place in a script.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -65,20 +65,31 @@ impl Trouble {
                 EvalAltResult::ErrorInFunctionCall(name, from, inner, position) => {
                     (called(name), inner, from, position)
                 }
-                EvalAltResult::ErrorInModule(name, inner, position) => {
-                    (format!("the module {name}, imported"), inner, name, position)
-                }
+                EvalAltResult::ErrorInModule(name, inner, position) => (
+                    format!("the module {name}, imported"),
+                    inner,
+                    name,
+                    position,
+                ),
                 _ => break,
             };
-            calls.push(format!("{what} at {}", at(&source, *position)));
+            let call = format!("{what} at {}", at(&source, *position));
+            // The built-in that calls a function stands at the same place as the function.
+            let place = at(&source, *position);
+            if !calls
+                .last()
+                .is_some_and(|last: &String| last.ends_with(&format!(" {place}")))
+            {
+                calls.push(call);
+            }
             if !next.is_empty() {
                 source.clone_from(next);
             }
             error = inner;
         }
         calls.reverse();
-        let Wording { message, hint, key } = say(error, registry, names);
         let text = session.sources.text(&source).unwrap_or_default();
+        let Wording { message, hint, key } = say(error, registry, names, &text);
         Self {
             message,
             hint,
@@ -90,10 +101,10 @@ impl Trouble {
 
     /// The whole message for a terminal, in colour where `colour` says so.
     pub fn display(&self, colour: bool) -> String {
-        let mut helps: Vec<String> = self.hint.iter().cloned().collect();
-        helps.extend(self.calls.iter().map(|call| format!("in {call}")));
+        let calls = self.calls.iter().map(|call| format!("in {call}"));
+        let calls = calls.collect::<Vec<_>>().join("\n");
         let Some(place) = self.place.as_ref().filter(|p| !p.text.is_empty()) else {
-            return self.without_place(&helps);
+            return self.without_place(&calls);
         };
         let name = place.source.as_str();
         let mut report = Report::build(
@@ -107,29 +118,47 @@ impl Trouble {
                 .with_message("here")
                 .with_color(Color::Red),
         );
-        report.with_notes(helps);
+        if let Some(hint) = &self.hint {
+            report.set_help(hint);
+        }
+        if !calls.is_empty() {
+            report.set_note(calls);
+        }
         let mut shown = Vec::new();
         let source = (name, Source::from(place.text.as_str()));
         match report.finish().write(source, &mut shown) {
-            Ok(()) => tidy(&String::from_utf8_lossy(&shown)),
-            Err(_) => self.without_place(&[]),
+            Ok(()) => tidy(&String::from_utf8_lossy(&shown), colour),
+            Err(_) => self.without_place(""),
         }
     }
 
-    fn without_place(&self, helps: &[String]) -> String {
+    fn without_place(&self, calls: &str) -> String {
         let mut text = format!("error: {}\n", self.message);
         if let Some(place) = &self.place {
             text += &format!("  at {}:{}:{}\n", place.source, place.line, place.column);
         }
-        for help in helps {
-            text += &format!("  {help}\n");
+        for line in self
+            .hint
+            .iter()
+            .flat_map(|hint| hint.lines())
+            .chain(calls.lines())
+        {
+            text += &format!("  {line}\n");
         }
         text
     }
 }
 
-/// Ends every line at its last visible character.
-fn tidy(text: &str) -> String {
+/// Ends every line at its last visible character. The word "error" arrives in colour whatever the
+/// settings say.
+fn tidy(text: &str, colour: bool) -> String {
+    let plain;
+    let text = if colour {
+        text
+    } else {
+        plain = text.replace("\u{1b}[31m", "").replace("\u{1b}[0m", "");
+        &plain
+    };
     let mut tidy: String = text
         .lines()
         .map(|line| line.trim_end().to_owned() + "\n")
@@ -190,7 +219,13 @@ fn place(source: &str, text: &str, position: Position, key: Option<&str>) -> Opt
 fn line_and_column(text: &str, offset: usize) -> (usize, usize) {
     let before: String = text.chars().take(offset).collect();
     let line = before.matches('\n').count() + 1;
-    let column = before.rsplit('\n').next().unwrap_or_default().chars().count() + 1;
+    let column = before
+        .rsplit('\n')
+        .next()
+        .unwrap_or_default()
+        .chars()
+        .count()
+        + 1;
     (line, column)
 }
 
@@ -219,7 +254,9 @@ fn token_length(rest: &str) -> usize {
         return 1;
     };
     if first.is_alphanumeric() || first == '_' {
-        return 1 + chars.take_while(|c| c.is_alphanumeric() || *c == '_').count();
+        return 1 + chars
+            .take_while(|c| c.is_alphanumeric() || *c == '_')
+            .count();
     }
     if first == '"' || first == '`' {
         let inside = chars.take_while(|c| *c != first && *c != '\n').count();

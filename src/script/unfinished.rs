@@ -66,7 +66,6 @@ mod tests {
             "while true {",
             "x.",
             "[1, 2].map(|x| {",
-            "let f = |x|",
         ] {
             assert!(is_unfinished(text), "{text}");
         }

@@ -1,7 +1,7 @@
 //! Tests that walk over every record of the language.
 
-use std::path::Path;
 use std::cell::RefCell;
+use std::path::Path;
 use std::rc::Rc;
 
 use super::{Language, Registry, Sandbox, Session};

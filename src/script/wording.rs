@@ -1,5 +1,7 @@
 //! The engine's errors in our own words.
 
+use std::sync::Arc;
+
 use rhai::{EvalAltResult, LexError, ParseErrorType};
 
 use super::fault::Fault;
@@ -54,11 +56,16 @@ fn did_you_mean(name: &str) -> String {
     format!("did you mean `{name}`?")
 }
 
-/// Says what an innermost error means.
-pub(super) fn say(error: &EvalAltResult, registry: &Registry, names: &[String]) -> Wording {
+/// Says what an innermost error in the script `text` means.
+pub(super) fn say(
+    error: &EvalAltResult,
+    registry: &Registry,
+    names: &[String],
+    text: &str,
+) -> Wording {
     use EvalAltResult as E;
     match error {
-        E::ErrorRuntime(thrown, _) => match thrown.read_lock::<Fault>() {
+        E::ErrorRuntime(thrown, _) => match thrown.read_lock::<Arc<Fault>>() {
             Some(fault) => Wording {
                 message: fault.message().to_owned(),
                 hint: fault.hint_text().map(str::to_owned),
@@ -72,7 +79,7 @@ pub(super) fn say(error: &EvalAltResult, registry: &Registry, names: &[String]) 
         E::ErrorFunctionNotFound(signature, _) => function(signature, registry, names),
         E::ErrorDotExpr(text, _) => property(text, registry),
         E::ErrorIndexingType(text, _) => indexing(text),
-        E::ErrorPropertyNotFound(name, _) => Wording::new(format!("the map has no key `{name}`")),
+        E::ErrorPropertyNotFound(name, _) => missing_key(name, text),
         E::ErrorIndexNotFound(index, _) => {
             Wording::new(format!("there is nothing at {}", show(index)))
         }
@@ -95,9 +102,8 @@ pub(super) fn say(error: &EvalAltResult, registry: &Registry, names: &[String]) 
             .hint("a function that calls itself needs a case in which it stops"),
         E::ErrorDataTooLarge(what, _) => too_large(what),
         E::ErrorTerminated(..) => Wording::new("interrupted"),
-        E::ErrorUnboundThis(_) => {
-            Wording::new("`this` stands for nothing here").hint("it is the value before the dot of a call")
-        }
+        E::ErrorUnboundThis(_) => Wording::new("`this` stands for nothing here")
+            .hint("it is the value before the dot of a call"),
         E::ErrorVariableExists(name, _) => Wording::new(format!("`{name}` exists already")),
         E::ErrorForbiddenVariable(name, _) => {
             Wording::new(format!("`{name}` cannot be the name of a variable"))
@@ -163,14 +169,21 @@ fn function(signature: &str, registry: &Registry, names: &[String]) -> Wording {
     }
     let short = name.rsplit("::").next().unwrap_or(name);
     let records = registry.named(short);
-    let phrase = given.iter().map(|k| with_article(k)).collect::<Vec<_>>().join(", ");
+    let phrase = given
+        .iter()
+        .map(|k| with_article(k))
+        .collect::<Vec<_>>()
+        .join(", ");
     if records.is_empty() {
         let wording = Wording::new(if phrase.is_empty() {
             format!("there is no function `{name}`")
         } else {
             format!("there is no function `{name}` for {phrase}")
         });
-        let known = registry.names().into_iter().chain(names.iter().map(String::as_str));
+        let known = registry
+            .names()
+            .into_iter()
+            .chain(names.iter().map(String::as_str));
         return wording.maybe(nearest(short, known).map(did_you_mean));
     }
     let own: Vec<_> = records
@@ -178,20 +191,27 @@ fn function(signature: &str, registry: &Registry, names: &[String]) -> Wording {
         .filter(|r| r.subject.is_some() && r.subject == given.first().map(String::as_str))
         .collect();
     match own.first() {
-        Some(record) => arity(record, given.len() - 1),
+        Some(record) => arity(record, given.len()),
         None if records.iter().all(|r| r.subject.is_none()) => arity(records[0], given.len()),
         None => {
             let usages = records.iter().map(|r| r.usage()).collect::<Vec<_>>();
-            let phrase = if phrase.is_empty() { "nothing".to_owned() } else { phrase };
+            let phrase = if phrase.is_empty() {
+                "nothing".to_owned()
+            } else {
+                phrase
+            };
             Wording::new(format!("`{short}` does not take {phrase}"))
                 .hint(format!("it is: {}", usages.join(", ")))
         }
     }
 }
 
+/// `given` counts the subject too, where the record has one.
 fn arity(record: &Record, given: usize) -> Wording {
-    let most = record.inputs.len();
-    let least = record.inputs.iter().filter(|i| !i.shape.optional).count();
+    let own = usize::from(record.subject.is_some() && record.form == Form::Function);
+    let given = given - usize::from(record.subject.is_some() && record.form != Form::Function);
+    let most = record.inputs.len() + own;
+    let least = record.inputs.iter().filter(|i| !i.shape.optional).count() + own;
     let wanted = match (least, most) {
         (0, 0) => "no values".to_owned(),
         (1, 1) => "1 value".to_owned(),
@@ -227,7 +247,10 @@ fn property(text: &str, registry: &Registry) -> Wording {
     }
     let wording = Wording::new(format!("{} has no property `{name}`", with_article(&kind)));
     let own = registry.belonging_to(&kind);
-    if let Some(method) = own.iter().find(|r| r.name == name && r.form != Form::Property) {
+    if let Some(method) = own
+        .iter()
+        .find(|r| r.name == name && r.form != Form::Property)
+    {
         return wording.hint(format!("`{name}` is called: {}", method.usage()));
     }
     wording.maybe(nearest(name, own.iter().map(|r| r.name)).map(did_you_mean))
@@ -253,17 +276,39 @@ fn indexing(text: &str) -> Wording {
     }
 }
 
+/// The map itself is out of reach here, but the keys of maps stand in the script's text.
+fn missing_key(name: &str, text: &str) -> Wording {
+    let is_word = |c: char| c.is_alphanumeric() || c == '_';
+    let keys = text.split(':').filter_map(|before| {
+        let before = before.trim_end().trim_end_matches('"');
+        let start = before.rfind(|c| !is_word(c)).map_or(0, |i| i + 1);
+        before.get(start..).filter(|key| !key.is_empty())
+    });
+    Wording::new(format!("the map has no key `{name}`"))
+        .maybe(nearest(name, keys).map(did_you_mean))
+}
+
 fn past_the_end(what: &str, item: &str, count: usize, index: i64) -> Wording {
     let wording = Wording::new(format!("index {index} is past the end of the {what}"));
     wording.hint(match count {
         0 => format!("the {what} is empty"),
         1 => format!("it has 1 {item}, number 0"),
-        n => format!("it has {n} {item}s, numbered 0 to {} (or -1 to -{n} from the end)", n - 1),
+        n => format!(
+            "it has {n} {item}s, numbered 0 to {} (or -1 to -{n} from the end)",
+            n - 1
+        ),
     })
 }
 
 fn mismatch(wanted: &str, given: &str) -> Wording {
-    let (wanted, given) = (people_say(wanted), people_say(given));
+    let wanted = match wanted {
+        w if w.contains("iterable") => {
+            "something to go through, such as a list or 0..10,".to_owned()
+        }
+        w if w.contains("boolean") => "true or false".to_owned(),
+        w => people_say(w),
+    };
+    let given = people_say(given.trim_start_matches("a "));
     match (wanted.as_str(), given.as_str()) {
         ("", given) => Wording::new(format!("{} does not fit here", with_article(given))),
         (wanted, "") => Wording::new(format!("{} is needed here", with_article(wanted))),
@@ -276,6 +321,10 @@ fn mismatch(wanted: &str, given: &str) -> Wording {
 }
 
 fn arithmetic(text: &str) -> Wording {
+    if text.to_lowercase().contains("division by zero") {
+        let sum = text.rsplit(": ").next().unwrap_or(text);
+        return Wording::new(format!("division by zero: {sum}"));
+    }
     let wording = Wording::new(lower_first(text));
     if text.to_lowercase().contains("overflow") {
         wording.hint("whole numbers end at 9223372036854775807; write one of them with a point (2.0) to go on in floats")
@@ -296,11 +345,15 @@ fn too_large(what: &str) -> Wording {
 fn parsing(kind: &ParseErrorType) -> Wording {
     use ParseErrorType as P;
     match kind {
-        P::UnexpectedEOF => Wording::new("the script ends too early").hint("something opened was not closed"),
+        P::UnexpectedEOF => {
+            Wording::new("the script ends too early").hint("something opened was not closed")
+        }
         P::BadInput(LexError::UnterminatedString) => {
             Wording::new("this text is not closed").hint("end it with the quote it began with")
         }
-        P::BadInput(LexError::UnexpectedInput(s)) => Wording::new(format!("`{s}` has no meaning here")),
+        P::BadInput(LexError::UnexpectedInput(s)) => {
+            Wording::new(format!("`{s}` has no meaning here"))
+        }
         P::BadInput(LexError::MalformedNumber(s)) => Wording::new(format!("`{s}` is not a number")),
         P::BadInput(LexError::MalformedEscapeSequence(s)) => {
             Wording::new(format!("`{s}` is not an escape")).hint("write a backslash as \\\\")
@@ -314,17 +367,24 @@ fn parsing(kind: &ParseErrorType) -> Wording {
         P::MissingToken(token, why) => {
             Wording::new(format!("`{token}` is missing")).hint(format!("it is needed {why}"))
         }
-        P::ExprExpected(what) => Wording::new(format!("{} is missing here", with_article(&expression(what)))),
+        P::ExprExpected(what) => Wording::new(format!(
+            "{} is missing here",
+            with_article(&expression(what))
+        )),
         P::VariableExpected => Wording::new("the name of a variable is missing here"),
         P::PropertyExpected => Wording::new("the name of a property or key is missing here"),
-        P::Reserved(word) => Wording::new(format!("`{word}` is a word of the language, not a name")),
+        P::Reserved(word) => {
+            Wording::new(format!("`{word}` is a word of the language, not a name"))
+        }
         P::UnknownOperator(op) => Wording::new(format!("there is no operator `{op}`")),
         P::AssignmentToConstant(name) => {
             Wording::new(format!("`{name}` is a constant and keeps its value"))
         }
         P::AssignmentToInvalidLHS(_) => Wording::new("nothing can be assigned to this")
             .hint("`=` sets a variable; `==` compares"),
-        P::DuplicatedProperty(name) => Wording::new(format!("the key `{name}` stands twice in this map")),
+        P::DuplicatedProperty(name) => {
+            Wording::new(format!("the key `{name}` stands twice in this map"))
+        }
         P::MismatchedType(wanted, given) => mismatch(wanted, given),
         P::FnDuplicatedDefinition(name, n) => Wording::new(format!(
             "there are two functions `{name}` with {n} parameter{}",
@@ -332,10 +392,11 @@ fn parsing(kind: &ParseErrorType) -> Wording {
         )),
         P::WrongFnDefinition => Wording::new("a function is defined inside another block")
             .hint("`fn` stands at the outermost level; inside, write |x| ..."),
-        P::FnMissingBody(_) => Wording::new("the body of the function is missing").hint("write it in { }"),
-        P::FnMissingParams(_) => {
-            Wording::new("the parameters of the function are missing").hint("write () when it has none")
+        P::FnMissingBody(_) => {
+            Wording::new("the body of the function is missing").hint("write it in { }")
         }
+        P::FnMissingParams(_) => Wording::new("the parameters of the function are missing")
+            .hint("write () when it has none"),
         P::FnMissingName => Wording::new("the name of the function is missing"),
         P::LoopBreak => Wording::new("this stands outside a loop"),
         P::ExprTooDeep => Wording::new("this expression is nested too deeply")

@@ -12,6 +12,23 @@ use super::super::registry::Registry;
 /// Writes the records.
 pub(super) fn records(room: &mut Room) {
     room.kind::<Help>();
+    room.kind::<Fault>();
+    room.property::<Fault>("message")
+        .about("What went wrong, in one sentence.")
+        .words("error text catch")
+        .example(
+            "try { sqrt(-1) } catch (e) { print(e.message) }",
+            "sqrt(-1) is not a real number",
+        )
+        .does(|fault: &Fault| fault.message().to_owned());
+    room.property::<Fault>("hint")
+        .about("What would be right; empty where nothing is known.")
+        .words("error advice catch")
+        .example(
+            "try { measured(1, -1) } catch (e) { print(e.hint) }",
+            "write () where it is not known",
+        )
+        .does(|fault: &Fault| fault.hint_text().unwrap_or_default().to_owned());
     room.plain_kind::<bool>("true or false.");
 
     room.function("help")
@@ -41,10 +58,21 @@ pub(super) fn records(room: &mut Room) {
         )
         .words("parameter argument option command line")
         .input("name", "", "name of the setting")
-        .input("default", "", "its value when none is given: a number, text, or true/false")
-        .input("meaning", "", "what it is for, shown by `kolk run FILE --help`")
+        .input(
+            "default",
+            "",
+            "its value when none is given: a number, text, or true/false",
+        )
+        .input(
+            "meaning",
+            "",
+            "what it is for, shown by `kolk run FILE --help`",
+        )
         .errors("the value given is not of the default's kind")
-        .example("setting(\"pairs\", 12, \"how many pairs to analyse\")", "12")
+        .example(
+            "setting(\"pairs\", 12, \"how many pairs to analyse\")",
+            "12",
+        )
         .does(
             |name: String, default: Dynamic, _meaning: Option<String>, call: Call| {
                 call.session()
@@ -65,8 +93,15 @@ pub(super) fn records(room: &mut Room) {
     room.function("print")
         .about("Prints a value on a line of its own, as a short readable summary.")
         .words("output show write say")
-        .input("value", "anything", "what to print; left out, an empty line")
-        .example("print(\"circulation\"); print(0.1 + 0.2)", "circulation\n0.3")
+        .input(
+            "value",
+            "anything",
+            "what to print; left out, an empty line",
+        )
+        .example(
+            "print(\"circulation\"); print(0.1 + 0.2)",
+            "circulation\n0.3",
+        )
         .of_the_engine("nothing");
 
     room.function("wait")
@@ -97,7 +132,11 @@ pub(super) fn records(room: &mut Room) {
         .words("check require test equal approximately")
         .input("value", "any, all three the same", "what was found")
         .input("expected", "any, all three the same", "what it should be")
-        .input("tolerance", "any, all three the same", "by how much it may differ")
+        .input(
+            "tolerance",
+            "any, all three the same",
+            "by how much it may differ",
+        )
         .errors("they differ by more")
         .example("assert_close(0.1 + 0.2, 0.3, 1e-12)", "")
         .does(|value: f64, expected: f64, tolerance: f64| {
@@ -127,7 +166,10 @@ fn help(about: Option<Dynamic>, call: &Call) -> Help {
     }
     match registry.kind(kind_name(&about)) {
         Some(kind) => kind_page(registry, kind),
-        None => Help(format!("A {}; nothing more is written about it.", kind_name(&about))),
+        None => Help(format!(
+            "A {}; nothing more is written about it.",
+            kind_name(&about)
+        )),
     }
 }
 
@@ -165,7 +207,10 @@ pub(super) fn numbers(list: &rhai::Array) -> Result<Vec<f64>, Fault> {
         .enumerate()
         .map(|(i, item)| {
             number(item).ok_or_else(|| {
-                Fault::new(format!("item {i} of the list is a {}, not a number", kind_name(item)))
+                Fault::new(format!(
+                    "item {i} of the list is a {}, not a number",
+                    kind_name(item)
+                ))
             })
         })
         .collect()

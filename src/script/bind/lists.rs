@@ -44,7 +44,9 @@ fn of_lists(room: &mut Room) {
         .unit("that of the numbers")
         .errors("the list is empty or an item is not a number")
         .example("[3, 1, 2].min()", "1")
-        .does(|list: &Array| some_numbers(list).map(|x| x.into_iter().fold(f64::INFINITY, f64::min)));
+        .does(|list: &Array| {
+            some_numbers(list).map(|x| x.into_iter().fold(f64::INFINITY, f64::min))
+        });
     room.method::<Array>("max")
         .about("The largest number of a list.")
         .words("greatest largest")
@@ -60,11 +62,7 @@ fn of_lists(room: &mut Room) {
         .input("separator", "", "what stands between two items")
         .example("[1, \"a\", 2.5].join(\", \")", "\"1, a, 2.5\"")
         .does(|list: &Array, separator: String| {
-            let text = |item: &Dynamic| {
-                item.clone()
-                    .into_string()
-                    .unwrap_or_else(|_| show(item))
-            };
+            let text = |item: &Dynamic| item.clone().into_string().unwrap_or_else(|_| show(item));
             list.iter().map(text).collect::<Vec<_>>().join(&separator)
         });
     room.function("steps")
@@ -112,13 +110,21 @@ fn of_the_engine(room: &mut Room) {
     room.method::<Array>("map")
         .about("The list of what a function makes of each item.")
         .words("apply each transform")
-        .input("function", "function", "what is applied, such as |x| x * 2, or a name such as sqrt")
+        .input(
+            "function",
+            "function",
+            "what is applied, such as |x| x * 2, or a name such as sqrt",
+        )
         .example("[1, 4, 9].map(sqrt)", "[1, 2, 3]")
         .of_the_engine("list");
     room.method::<Array>("filter")
         .about("The list of the items for which a condition holds.")
         .words("select where choose")
-        .input("condition", "function", "a function that gives true or false, such as |x| x > 0")
+        .input(
+            "condition",
+            "function",
+            "a function that gives true or false, such as |x| x > 0",
+        )
         .example("[1, -2, 3].filter(|x| x > 0)", "[1, 3]")
         .of_the_engine("list");
     room.method::<Array>("contains")
@@ -128,7 +134,7 @@ fn of_the_engine(room: &mut Room) {
         .example("[1, 2].contains(2)", "true")
         .of_the_engine("true/false");
     room.method::<Array>("sort")
-        .about("Puts the list in rising order.")
+        .about("Puts a list of numbers or of texts in rising order; |a, b| a.x < b.x may say which comes first.")
         .words("order arrange")
         .example("let l = [3, 1, 2]; l.sort(); l", "[1, 2, 3]")
         .of_the_engine("nothing");

@@ -85,8 +85,18 @@ pub(super) fn records(room: &mut Room) {
 
 fn rounding(room: &mut Room) {
     let rules: [(&str, &str, (&str, &str), fn(f64) -> f64); 3] = [
-        ("floor", "The whole number at or below.", ("floor(-1.5)", "-2"), f64::floor),
-        ("ceil", "The whole number at or above.", ("ceil(1.2)", "2"), f64::ceil),
+        (
+            "floor",
+            "The whole number at or below.",
+            ("floor(-1.5)", "-2"),
+            f64::floor,
+        ),
+        (
+            "ceil",
+            "The whole number at or above.",
+            ("ceil(1.2)", "2"),
+            f64::ceil,
+        ),
         (
             "round",
             "The nearest whole number; a half goes away from zero.",
@@ -107,7 +117,10 @@ fn rounding(room: &mut Room) {
                 if rounded.abs() < 9.2e18 {
                     Ok(rounded as i64)
                 } else {
-                    Err(Fault::new(format!("{} is too large for a whole number", number_text(*x))))
+                    Err(Fault::new(format!(
+                        "{} is too large for a whole number",
+                        number_text(*x)
+                    )))
                 }
             });
     }
@@ -120,7 +133,9 @@ fn rounding(room: &mut Room) {
         .example("decimals(2 / 3, 2)", "\"0.67\"")
         .does(|x: &f64, count: usize| {
             if count > 15 {
-                return Err(Fault::new("a number has at most 15 digits behind the point"));
+                return Err(Fault::new(
+                    "a number has at most 15 digits behind the point",
+                ));
             }
             Ok(format!("{x:.count$}"))
         });
@@ -162,7 +177,11 @@ fn of_two(room: &mut Room) {
         .about("The angle of the point (x, y) seen from the origin, written atan2(y, x).")
         .words("direction angle inverse tangent")
         .takes("any")
-        .input("x", "any", "distance to the right; the first number is the distance up")
+        .input(
+            "x",
+            "any",
+            "distance to the right; the first number is the distance up",
+        )
         .unit("rad")
         .example("atan2(1, -1) / pi", "0.75")
         .does(|y: &f64, x: f64| y.atan2(x));

@@ -59,8 +59,16 @@ fn making(room: &mut Room) {
         .about("A measured value from its number, standard uncertainty and unit.")
         .words("uncertainty error quantity unit value")
         .input("value", "the unit named last", "the number")
-        .input("unc", "", "its standard uncertainty in the same unit, 0 or above; () when it is not known")
-        .input("unit", "", "its unit, such as \"mm\" or \"mm2/s\"; left out for a plain number")
+        .input(
+            "unc",
+            "",
+            "its standard uncertainty in the same unit, 0 or above; () when it is not known",
+        )
+        .input(
+            "unit",
+            "",
+            "its unit, such as \"mm\" or \"mm2/s\"; left out for a plain number",
+        )
         .unit("the unit named last")
         .errors("the uncertainty is negative, or the unit is not known")
         .source("JCGM 100:2008 (GUM), 5.1 and 5.2, for what arithmetic does with it")
@@ -186,7 +194,9 @@ fn changing(room: &mut Room) {
 
 fn root(m: &Measured) -> Result<Measured, Fault> {
     if m.value() < 0.0 {
-        return Err(Fault::new(format!("the square root of {m} is not a real number")));
+        return Err(Fault::new(format!(
+            "the square root of {m} is not a real number"
+        )));
     }
     m.sqrt()
         .ok_or_else(|| Fault::new(format!("the unit of {m} has no square root")))
@@ -201,7 +211,10 @@ fn sums(room: &mut Room) {
             "Sum, in the unit of the left side. The uncertainties add as their correlation says.",
             Measured::plus,
             [
-                ("measured(3, 0.3, \"mm\") + measured(4, 0.4, \"mm\")", "7.0 ± 0.5 mm"),
+                (
+                    "measured(3, 0.3, \"mm\") + measured(4, 0.4, \"mm\")",
+                    "7.0 ± 0.5 mm",
+                ),
                 ("1 + measured(0.5, 0.1)", "1.50 ± 0.10"),
             ],
         ),
@@ -263,7 +276,10 @@ fn products(room: &mut Room) {
         .unit("the quotient of the units")
         .errors("the right side is 0")
         .source("JCGM 100:2008 (GUM), 5.2.2")
-        .example("measured(20, 0.5, \"mm\") / exact(4, \"s\")", "5.00 ± 0.13 mm/s")
+        .example(
+            "measured(20, 0.5, \"mm\") / exact(4, \"s\")",
+            "5.00 ± 0.13 mm/s",
+        )
         .does(|m: &Measured, other: NumberOr<Measured>| over(m, &measured(other)));
     room.operator::<f64>("/")
         .about("A plain number over a measured value.")
@@ -311,12 +327,48 @@ fn power(m: &Measured, exponent: f64) -> Result<Measured, Fault> {
 fn comparisons(room: &mut Room) {
     type Holds = fn(Ordering) -> bool;
     let rules: [(&str, Holds, (&str, &str), (&str, &str)); 6] = [
-        ("==", |o| o.is_eq(), ("exact(1, \"cm\") == exact(10, \"mm\")", "true"), ("1 == exact(1)", "true")),
-        ("!=", |o| o.is_ne(), ("exact(1, \"cm\") != exact(10, \"mm\")", "false"), ("1 != exact(1)", "false")),
-        ("<", |o| o.is_lt(), ("measured(1, 0.1, \"mm\") < measured(2, 0.1, \"mm\")", "true"), ("2 < measured(1, 0.1)", "false")),
-        (">", |o| o.is_gt(), ("measured(1, 0.1, \"cm\") > measured(2, 0.1, \"mm\")", "true"), ("2 > measured(1, 0.1)", "true")),
-        ("<=", |o| o.is_le(), ("exact(1, \"s\") <= exact(1000, \"ms\")", "true"), ("1 <= exact(1)", "true")),
-        (">=", |o| o.is_ge(), ("exact(1, \"s\") >= exact(1000, \"ms\")", "true"), ("1 >= exact(1)", "true")),
+        (
+            "==",
+            |o| o.is_eq(),
+            ("exact(1, \"cm\") == exact(10, \"mm\")", "true"),
+            ("1 == exact(1)", "true"),
+        ),
+        (
+            "!=",
+            |o| o.is_ne(),
+            ("exact(1, \"cm\") != exact(10, \"mm\")", "false"),
+            ("1 != exact(1)", "false"),
+        ),
+        (
+            "<",
+            |o| o.is_lt(),
+            (
+                "measured(1, 0.1, \"mm\") < measured(2, 0.1, \"mm\")",
+                "true",
+            ),
+            ("2 < measured(1, 0.1)", "false"),
+        ),
+        (
+            ">",
+            |o| o.is_gt(),
+            (
+                "measured(1, 0.1, \"cm\") > measured(2, 0.1, \"mm\")",
+                "true",
+            ),
+            ("2 > measured(1, 0.1)", "true"),
+        ),
+        (
+            "<=",
+            |o| o.is_le(),
+            ("exact(1, \"s\") <= exact(1000, \"ms\")", "true"),
+            ("1 <= exact(1)", "true"),
+        ),
+        (
+            ">=",
+            |o| o.is_ge(),
+            ("exact(1, \"s\") >= exact(1000, \"ms\")", "true"),
+            ("1 >= exact(1)", "true"),
+        ),
     ];
     for (name, holds, example, number_first) in rules {
         let about = "Compares the numbers exactly, after conversion to one unit; the uncertainty \
