@@ -16,6 +16,7 @@ mod plan;
 mod predictor;
 mod run;
 mod spline;
+mod taper;
 mod transform;
 mod validate;
 

@@ -5,7 +5,8 @@ use rayon::prelude::*;
 
 use super::deform::Deformed;
 use super::layout::Layout;
-use super::peak::three_point;
+use super::peak::{Patch, peak_offset};
+use super::taper::Taper;
 use super::transform::{BATCH, Correlator, Scratch};
 use crate::task::{Cancelled, Task};
 
@@ -39,6 +40,10 @@ pub(crate) fn correlate(
     task: &Task,
 ) -> Result<Array2<Finding>, Cancelled> {
     let correlator = Correlator::new(layout.window.height, layout.window.width);
+    let tapers = [
+        Taper::new(layout.window.width),
+        Taper::new(layout.window.height),
+    ];
     let n = layout.window.height * layout.window.width * BATCH;
     let mut out = Array2::from_elem(layout.shape(), Finding::NOTHING);
     let per_row = layout.columns;
@@ -57,7 +62,15 @@ pub(crate) fn correlate(
                 task.check()?;
                 for (k, batch) in row.chunks_mut(BATCH).enumerate() {
                     let first = k * BATCH;
-                    bench.batch(&correlator, images, layout, (j, first), reach, batch);
+                    bench.batch(
+                        &correlator,
+                        images,
+                        layout,
+                        &tapers,
+                        (j, first),
+                        reach,
+                        batch,
+                    );
                 }
                 Ok(())
             },
@@ -80,23 +93,25 @@ impl Bench {
         correlator: &Correlator,
         images: &Deformed,
         layout: &Layout,
+        tapers: &[Taper; 2],
         (j, first): (usize, usize),
         reach: (usize, usize),
         out: &mut [Finding],
     ) {
-        let mut energy = [(0f32, 0f32, 0f32); BATCH];
-        for l in 0..BATCH {
+        let mut contents = [Contents::default(); BATCH];
+        for (l, contents) in contents.iter_mut().enumerate() {
             let corner = layout.corner(j, (first + l).min(layout.columns - 1));
-            energy[l] = gather(images, layout, corner, l, &mut self.a, &mut self.b);
+            let lanes = (&mut self.a[..], &mut self.b[..]);
+            *contents = gather(images, layout, tapers, corner, l, lanes);
         }
         correlator.correlate(&self.a, &self.b, &mut self.planes, &mut self.scratch);
         for (l, out) in out.iter_mut().enumerate() {
-            let (ea, eb, lit) = energy[l];
-            let norm = (ea * eb).sqrt();
+            let Contents { energy, lit } = contents[l];
+            let norm = (energy.0 * energy.1).sqrt();
             *out = Finding {
                 lit,
                 ..if norm > 0.0 && norm.is_finite() {
-                    read_plane(&self.planes, layout, reach, l, norm)
+                    read_plane(&self.planes, layout, tapers, reach, l, norm)
                 } else {
                     Finding::NOTHING
                 }
@@ -105,48 +120,64 @@ impl Bench {
     }
 }
 
+/// What one gathered window holds: the energy of its two weighted exposures and its lit share.
+#[derive(Clone, Copy, Default)]
+struct Contents {
+    energy: (f32, f32),
+    lit: f32,
+}
+
+/// Copies one window into its lane: weighted, its weighted mean removed, dark pixels zero.
 fn gather(
     images: &Deformed,
     layout: &Layout,
+    tapers: &[Taper; 2],
     (top, left): (usize, usize),
     lane: usize,
-    a: &mut [f32],
-    b: &mut [f32],
-) -> (f32, f32, f32) {
+    (a, b): (&mut [f32], &mut [f32]),
+) -> Contents {
     let (w, h) = (layout.window.width, layout.window.height);
-    let rows = |image: &'_ [f32], r: usize| {
+    let [across, down] = tapers;
+    let pixels = |r: usize| {
         let start = (top + r) * images.width + left;
-        start..(start + w).min(image.len())
+        (start..start + w).zip(&across.weights).map(move |(p, wx)| {
+            let lit = images.lit.as_ref().map_or(1.0, |l| l[p]);
+            (p, lit, lit * wx * down.weights[r])
+        })
     };
-    let mut mean = (0f32, 0f32, 0f32);
+    let (mut sum_a, mut sum_b, mut weight, mut lit) = (0f32, 0f32, 0f32, 0f32);
     for r in 0..h {
-        let range = rows(&images.first, r);
-        for p in range {
-            let lit = images.lit.as_ref().map_or(1.0, |l| l[p]);
-            mean.0 += lit * images.first[p];
-            mean.1 += lit * images.second[p];
-            mean.2 += lit;
+        for (p, bright, w) in pixels(r) {
+            sum_a += w * images.first[p];
+            sum_b += w * images.second[p];
+            weight += w;
+            lit += bright;
         }
     }
-    let (ma, mb) = (mean.0 / mean.2.max(1.0), mean.1 / mean.2.max(1.0));
-    let (mut ea, mut eb) = (0.0, 0.0);
+    let weight = weight.max(f32::MIN_POSITIVE);
+    let (mean_a, mean_b) = (sum_a / weight, sum_b / weight);
+    let mut energy = (0.0, 0.0);
     for r in 0..h {
-        for (c, p) in rows(&images.first, r).enumerate() {
-            let lit = images.lit.as_ref().map_or(1.0, |l| l[p]);
-            let va = lit * (images.first[p] - ma);
-            let vb = lit * (images.second[p] - mb);
-            a[(r * w + c) * BATCH + lane] = va;
-            b[(r * w + c) * BATCH + lane] = vb;
-            ea += va * va;
-            eb += vb * vb;
+        for (c, (p, _, w)) in pixels(r).enumerate() {
+            let va = w * (images.first[p] - mean_a);
+            let vb = w * (images.second[p] - mean_b);
+            let cell = (r * layout.window.width + c) * BATCH + lane;
+            (a[cell], b[cell]) = (va, vb);
+            energy.0 += va * va;
+            energy.1 += vb * vb;
         }
     }
-    (ea, eb, mean.2 / (w * h) as f32)
+    Contents {
+        energy,
+        lit: lit / (w * h) as f32,
+    }
 }
 
+/// Reads the highest and the next highest peak of one plane.
 fn read_plane(
     planes: &[f32],
     layout: &Layout,
+    tapers: &[Taper; 2],
     (reach_x, reach_y): (usize, usize),
     lane: usize,
     norm: f32,
@@ -172,12 +203,14 @@ fn read_plane(
     };
     let (top, x, y) = highest(None);
     let (next, x2, y2) = highest(Some((x, y)));
-    // A window that moved by m has lost the share |m|/W of its pattern at that offset: the
-    // circular correlation is divided by what is left, so that the lean towards zero goes.
-    let whole_x = |m: isize| 1.0 - m.abs() as f32 / w as f32;
-    let whole_y = |m: isize| 1.0 - m.abs() as f32 / h as f32;
-    let dx = three_point([-1, 0, 1].map(|k| at(x + k, y) / whole_x(x + k)));
-    let dy = three_point([-1, 0, 1].map(|k| at(x, y + k) / whole_y(y + k)));
+    let [across, down] = tapers;
+    let patch: Patch = std::array::from_fn(|r| {
+        std::array::from_fn(|c| {
+            let (x, y) = (x + c as isize - 2, y + r as isize - 2);
+            at(x, y) / (across.left(x) * down.left(y))
+        })
+    });
+    let (dx, dy) = peak_offset(&patch);
     Finding {
         shift: (x as f64 + dx, y as f64 + dy),
         height: top / norm,

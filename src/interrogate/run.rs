@@ -190,8 +190,7 @@ fn judge(
         for (at, candidate) in signal.indexed_iter() {
             if *candidate {
                 let d = (shifts.x[at], shifts.y[at]);
-                let residual = test.residual(&shifts, &before, at, d);
-                good[at] = residual.is_some_and(|r| r <= test.limit);
+                good[at] = test.fits(&shifts, &before, at, d);
             }
         }
     }
@@ -208,10 +207,7 @@ fn judge(
                 floor_px: test.floor_px + 0.25,
                 ..test
             };
-            if near
-                .residual(&shifts, &accepted, at, d)
-                .is_some_and(|r| r <= near.limit)
-            {
+            if near.fits(&shifts, &accepted, at, d) {
                 (shifts.x[at], shifts.y[at]) = d;
             }
         }
