@@ -148,7 +148,7 @@ fn nearest(wanted: &str, folder: &Path) -> String {
         Err(_) if !folder.exists() => return "; that folder does not exist".to_owned(),
         Err(e) => return format!("; that folder cannot be read: {e}"),
     };
-    let allowed = 1 + wanted.chars().count() / 3;
+    let allowed = (wanted.chars().count() / 4).max(1);
     let mut close: Vec<(usize, String)> = names
         .map(|name| (distance(wanted, &name), name))
         .filter(|(d, _)| *d <= allowed)
@@ -180,4 +180,130 @@ fn distance(pattern: &str, name: &str) -> usize {
         }
     }
     row[name.len()]
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use proptest::prelude::*;
+
+    fn folder(names: &[&str]) -> tempfile::TempDir {
+        let folder = tempfile::tempdir().unwrap();
+        for name in names {
+            let path = folder.path().join(name);
+            std::fs::create_dir_all(path.parent().unwrap()).unwrap();
+            std::fs::write(path, "").unwrap();
+        }
+        folder
+    }
+
+    fn matched(patterns: &[&str], base: &Path) -> Result<Vec<String>, FrameError> {
+        let patterns: Vec<_> = patterns.iter().map(|p| (*p).to_owned()).collect();
+        let files = matching_files(&patterns, base)?;
+        let relative = |f: PathBuf| f.strip_prefix(base).unwrap().display().to_string();
+        Ok(files.into_iter().map(relative).collect())
+    }
+
+    #[test]
+    fn numbers_in_names_compare_as_numbers() {
+        let mut names = [
+            "f10b", "f9", "f010a", "f1", "f0999", "f01000", "f08", "e11", "f", "f10a",
+        ];
+        names.sort_by(|a, b| natural_order(a, b));
+        let expected = [
+            "e11", "f", "f1", "f08", "f9", "f010a", "f10a", "f10b", "f0999", "f01000",
+        ];
+        assert_eq!(names, expected);
+        // Longer than any machine number.
+        let long = "9".repeat(60);
+        assert_eq!(natural_order(&long, &format!("1{long}")), Ordering::Less);
+    }
+
+    proptest! {
+        #[test]
+        fn natural_order_is_a_total_order(mut names in prop::collection::vec("[a0-2]{0,5}", 3)) {
+            names.sort_by(|a, b| natural_order(a, b));
+            for i in 0..3 {
+                for j in 0..3 {
+                    let found = natural_order(&names[i], &names[j]);
+                    prop_assert_eq!(found.reverse(), natural_order(&names[j], &names[i]));
+                    prop_assert_eq!(found == Ordering::Equal, names[i] == names[j]);
+                    prop_assert!(i > j || found != Ordering::Greater);
+                }
+            }
+        }
+    }
+
+    #[test]
+    fn a_pattern_brings_files_in_number_order_and_a_list_keeps_its_own() {
+        let folder = folder(&[
+            "b_2.tif",
+            "b_10.tif",
+            "b_1.tif",
+            ".b_0.tif",
+            "b_3.txt",
+            "in/b_4.tif",
+        ]);
+        let base = folder.path();
+        assert_eq!(
+            matched(&["b_*.tif"], base).unwrap(),
+            ["b_1.tif", "b_2.tif", "b_10.tif"]
+        );
+        assert_eq!(
+            matched(&["b_10.tif", "b_1.tif"], base).unwrap(),
+            ["b_10.tif", "b_1.tif"]
+        );
+        assert_eq!(
+            matched(&["in/*", "b_?.tif"], base).unwrap(),
+            ["in/b_4.tif", "b_1.tif", "b_2.tif"]
+        );
+    }
+
+    #[test]
+    fn letters_that_mean_something_in_patterns_may_stand_in_names() {
+        let folder = folder(&["run [1]/a[1].tif", "run [1]/a2.tif"]);
+        let base = folder.path().join("run [1]");
+        assert_eq!(matched(&["a[1].tif"], &base).unwrap(), ["a[1].tif"]);
+        assert_eq!(matched(&["a*.tif"], &base).unwrap(), ["a2.tif", "a[1].tif"]);
+    }
+
+    #[test]
+    fn names_that_match_nothing_are_reported_with_the_place_and_the_nearest_names() {
+        let folder = folder(&[
+            "basin/inlet_01.tiff",
+            "basin/inlet_02.tiff",
+            "basin/notes.txt",
+        ]);
+        let base = folder.path();
+        let error = |pattern: &str| matched(&[pattern], base).unwrap_err().to_string();
+        let text = error("basin/*.tif");
+        assert!(
+            text.contains("no file matches \"basin/*.tif\": looked in"),
+            "{text}"
+        );
+        assert!(
+            text.ends_with("the nearest names there are inlet_01.tiff, inlet_02.tiff"),
+            "{text}"
+        );
+        assert!(error("basin/inlet_03.tif").contains("nearest names there are inlet_01.tiff"));
+        assert!(error("basin/INLET_01.TIF").contains("inlet_01.tiff"));
+        assert!(error("bassin/*.tif").ends_with("that folder does not exist"));
+        assert!(error("bassin").ends_with("the nearest name there is basin"));
+        assert!(error("basin/a***.tif").contains("is not a file pattern"));
+        assert_eq!(matched(&[], base), Err(FrameError::NothingNamed));
+    }
+
+    #[test]
+    fn a_file_that_two_patterns_bring_is_refused() {
+        let folder = folder(&["a_1.tif", "a_2.tif"]);
+        let text = matched(&["a_2.tif", "*.tif"], folder.path())
+            .unwrap_err()
+            .to_string();
+        assert!(
+            text.contains("a_2.tif is listed twice, the second time by \"*.tif\""),
+            "{text}"
+        );
+        // Named twice on purpose: a frame against itself.
+        assert!(matched(&["a_1.tif", "a_1.tif"], folder.path()).is_ok());
+    }
 }

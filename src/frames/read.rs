@@ -176,3 +176,139 @@ pub(super) fn check_size(image: &str, width: u32, height: u32) -> Result<(), Fra
     }
     Ok(())
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use proptest::prelude::*;
+    use std::io::Cursor;
+    use std::path::PathBuf;
+
+    /// Every image file the outside checks read, good and bad.
+    fn files() -> Vec<(PathBuf, Vec<u8>)> {
+        let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/data/images");
+        let mut files: Vec<_> = std::fs::read_dir(folder)
+            .unwrap()
+            .map(|entry| entry.unwrap().path())
+            .map(|path| (path.clone(), std::fs::read(path).unwrap()))
+            .collect();
+        files.sort();
+        files
+    }
+
+    /// Reads headers and every page; errors are an answer, panics are not.
+    fn read_all(bytes: &[u8], path: &Path) -> Result<usize, FrameError> {
+        let length = bytes.len() as u64;
+        let pages = headers_from(Cursor::new(bytes), length, path)?;
+        for page in &pages {
+            let frame = frame_from(Cursor::new(bytes), length, path, page.position)?;
+            assert_eq!((frame.width(), frame.height()), (page.width, page.height));
+        }
+        Ok(pages.len())
+    }
+
+    proptest! {
+        #![proptest_config(ProptestConfig::with_cases(3000))]
+        #[test]
+        fn no_damage_to_a_file_makes_reading_panic(
+            which in any::<prop::sample::Index>(),
+            changes in prop::collection::vec((any::<prop::sample::Index>(), any::<u8>(), 0u8..4), 0..6),
+            kept in prop::option::of(any::<prop::sample::Index>()),
+        ) {
+            let files = files();
+            let (path, bytes) = which.get(&files);
+            let mut bytes = bytes.clone();
+            if bytes.is_empty() {
+                return Ok(());
+            }
+            for (place, value, kind) in changes {
+                // Half of the changes go to the first 300 bytes, where most headers are.
+                let reach = if kind % 2 == 0 { bytes.len() } else { bytes.len().min(300) };
+                let place = place.index(reach);
+                bytes[place] = if kind < 2 { value } else { [0, 1, 255, 128][usize::from(value % 4)] };
+            }
+            if let Some(kept) = kept {
+                bytes.truncate(kept.index(bytes.len()));
+            }
+            // Whatever it says, it names the file.
+            if let Err(error) = read_all(&bytes, path) {
+                prop_assert!(error.to_string().contains(&*path.to_string_lossy()));
+            }
+        }
+    }
+
+    #[test]
+    fn every_good_file_cut_anywhere_in_its_last_part_is_an_error() {
+        for (path, bytes) in files() {
+            let name = path.file_name().unwrap().to_string_lossy().into_owned();
+            // PNG ends in 12 bytes that hold nothing; the pixels of the others end the file.
+            let tail = if name.ends_with(".png") { 13 } else { 1 };
+            if name.starts_with("bad") || bytes.len() < 200 {
+                continue;
+            }
+            for end in [
+                bytes.len() - tail,
+                bytes.len() * 3 / 4,
+                bytes.len() / 2,
+                30,
+                9,
+            ] {
+                assert!(
+                    read_all(&bytes[..end], &path).is_err(),
+                    "{name} cut at {end}"
+                );
+            }
+        }
+    }
+
+    /// A little-endian TIFF with one strip of `data` and the header entries given.
+    fn tiff(width: u32, height: u32, bits: u32, compression: u32, data: &[u8]) -> Vec<u8> {
+        let entries: [(u16, u32); 8] = [
+            (256, width),
+            (257, height),
+            (258, bits),
+            (259, compression),
+            (262, 1),
+            (273, 8 + 2 + 8 * 12 + 4),
+            (278, height),
+            (279, data.len() as u32),
+        ];
+        let mut file = b"II*\0\x08\0\0\0\x08\0".to_vec();
+        for (tag, value) in entries {
+            file.extend(tag.to_le_bytes());
+            file.extend([4, 0, 1, 0, 0, 0]);
+            file.extend(value.to_le_bytes());
+        }
+        file.extend([0; 4]);
+        file.extend(data);
+        file
+    }
+
+    #[test]
+    fn a_small_file_that_claims_to_be_huge_is_refused_before_memory_is_taken() {
+        let path = Path::new("claims.tif");
+        for (width, height) in [(u32::MAX, u32::MAX), (32769, 1), (1, 40000), (32768, 32768)] {
+            let error = read_all(&tiff(width, height, 16, 1, &[0; 64]), path).unwrap_err();
+            assert!(matches!(error, FrameError::TooLarge { .. }), "{error}");
+            assert!(error.to_string().contains("px"));
+        }
+        // As large as allowed, but not there.
+        let error = read_all(&tiff(16384, 16384, 16, 1, &[0; 64]), path).unwrap_err();
+        assert!(matches!(error, FrameError::Truncated { .. }), "{error}");
+        assert_eq!(read_all(&tiff(8, 4, 16, 1, &[0; 64]), path), Ok(1));
+    }
+
+    #[test]
+    fn a_folder_and_a_missing_file_are_said_to_be_so() {
+        let folder = tempfile::tempdir().unwrap();
+        let error = read_frames(folder.path()).unwrap_err().to_string();
+        assert!(error.contains("it is a folder"), "{error}");
+        let error = read_frames(&folder.path().join("a.tif"))
+            .unwrap_err()
+            .to_string();
+        assert!(
+            error.starts_with("there is no file") && error.ends_with("a.tif"),
+            "{error}"
+        );
+    }
+}

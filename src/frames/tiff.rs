@@ -6,7 +6,7 @@ use std::path::Path;
 use ::tiff::decoder::{Decoder, DecodingResult, Limits};
 use ::tiff::tags::Tag;
 use ::tiff::{ColorType, TiffError};
-use ndarray::Array2;
+use ndarray::{Array2, ArrayViewMut2, s};
 
 use super::error::page_name;
 use super::read::{MAX_PIXELS, Page, check_size};
@@ -69,23 +69,52 @@ pub(super) fn frame<R: Read + Seek>(
     }
     let page = header(&mut decoder, length, &image, position)?;
     let declared = declared_bits(&mut decoder, page.bits, &image)?;
-    let levels: Vec<f32> = match decoder.read_image().map_err(|e| translate(&image, e))? {
-        DecodingResult::U8(levels) => levels.into_iter().map(f32::from).collect(),
-        DecodingResult::U16(levels) => levels.into_iter().map(f32::from).collect(),
-        _ => {
-            return Err(corrupt(
-                &image,
-                "its pixels are not of the kind it declares",
-            ));
-        }
-    };
+    let pixels = pixels(&mut decoder, page, &image)?;
     // A declared depth that a pixel exceeds is a mistake of the writer: the file's own depth holds.
     let bits = declared
-        .filter(|bits| levels.iter().all(|g| *g < 2f32.powi(i32::from(*bits))))
+        .filter(|bits| pixels.iter().all(|g| *g < 2f32.powi(i32::from(*bits))))
         .unwrap_or(page.bits);
-    let pixels = Array2::from_shape_vec((page.height, page.width), levels)
-        .map_err(|_| corrupt(&image, "it holds another number of pixels than it declares"))?;
     Ok(Frame { pixels, bits })
+}
+
+/// Reads strip by strip or tile by tile, each in whole rows of the strip or tile: row by row into
+/// an image, the LZW reader of `tiff` 0.11.3 calls some good tiles cut short.
+fn pixels<R: Read + Seek>(
+    decoder: &mut Decoder<R>,
+    page: Page,
+    image: &str,
+) -> Result<Array2<f32>, FrameError> {
+    let (width, height) = decoder.chunk_dimensions();
+    let (width, height) = (width as usize, height as usize);
+    let across = page.width.div_ceil(width);
+    let row_bytes = width * usize::from(page.bits / 8);
+    let mut pixels = Array2::zeros((page.height, page.width));
+    let mut buffer = DecodingResult::U8(Vec::new());
+    for index in 0..across * page.height.div_ceil(height) {
+        let (top, left) = (index / across * height, index % across * width);
+        let bottom = page.height.min(top.saturating_add(height));
+        let right = page.width.min(left + width);
+        let part = pixels.slice_mut(s![top..bottom, left..right]);
+        u32::try_from(index)
+            .map_err(TiffError::from)
+            .and_then(|index| decoder.read_chunk_to_buffer(&mut buffer, index, row_bytes))
+            .map_err(|e| translate(image, e))?;
+        match &buffer {
+            DecodingResult::U8(levels) => place(levels, width, part),
+            DecodingResult::U16(levels) => place(levels, width, part),
+            _ => return Err(corrupt(image, "its pixels are not of the kind it declares")),
+        }
+    }
+    Ok(pixels)
+}
+
+/// Puts rows of `width` levels where they belong, without what pads a tile beyond the image.
+fn place<T: Copy + Into<f32>>(levels: &[T], width: usize, mut part: ArrayViewMut2<'_, f32>) {
+    for (row, levels) in part.rows_mut().into_iter().zip(levels.chunks(width)) {
+        for (pixel, level) in row.into_iter().zip(levels) {
+            *pixel = (*level).into();
+        }
+    }
 }
 
 fn open<R: Read + Seek>(reader: R, file: &Path) -> Result<Decoder<R>, FrameError> {
@@ -144,8 +173,8 @@ fn grey_bits<R: Read + Seek>(decoder: &mut Decoder<R>, image: &str) -> Result<u8
         .unwrap_or(1);
     let what = match (colours, format) {
         (ColorType::Gray(bits @ (8 | 16)), 1) => return Ok(bits),
-        (ColorType::Gray(bits), 1) => format!("grey of {bits} bits"),
-        (ColorType::Gray(bits), 2) => format!("grey of {bits} bits with a sign"),
+        (ColorType::Gray(bits), 1) => format!("{bits}-bit grey"),
+        (ColorType::Gray(bits), 2) => format!("{bits}-bit grey with a sign"),
         (ColorType::Gray(bits), _) => format!("{bits}-bit floating-point grey"),
         (ColorType::Multiband { num_samples, .. }, _) => format!("made of {num_samples} channels"),
         (other, _) => return Err(colour(image, colour_name(other))),
