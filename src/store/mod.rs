@@ -1,1 +1,10 @@
-//! Under construction.
+//! Files in open formats, written whole or not at all.
+//!
+//! Every file is first written beside its place and then renamed, so that a reader finds the old
+//! file or the new one and never a part. Nothing here decides which folders may be written.
+
+mod atomic;
+mod tiff;
+
+pub use atomic::{StoreError, write_atomically};
+pub use tiff::{write_tiff, write_tiff_pages};
