@@ -31,6 +31,24 @@ pub enum StoreError {
         /// What does not fit and what would.
         why: String,
     },
+    /// A file that is missing or may not be read.
+    #[error("{file} cannot be read: {source}")]
+    Read {
+        /// The file.
+        file: String,
+        /// What the system said.
+        source: io::Error,
+    },
+    /// What stands in a file is not what was expected.
+    #[error("{file}{}: {what}", line.map_or(String::new(), |line| format!(", line {line}")))]
+    Content {
+        /// The file.
+        file: String,
+        /// The line, counted from 1, where there is one to blame.
+        line: Option<usize>,
+        /// What is wrong and what would be right.
+        what: String,
+    },
 }
 
 /// Writes the file at `path` by `write`, into a temporary file in the same folder that takes the
