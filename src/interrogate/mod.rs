@@ -21,4 +21,4 @@ mod transform;
 mod validate;
 
 pub use plan::{Plan, PlanError, PlanOptions, WindowSize};
-pub use run::{InterrogateError, interrogate_images};
+pub use run::{InterrogateError, interrogate, interrogate_all, interrogate_images};

@@ -1,6 +1,9 @@
 //! From a pair or a recording to vector fields.
 
+use std::sync::atomic::{AtomicUsize, Ordering};
+
 use ndarray::Array2;
+use rayon::prelude::*;
 
 use super::deform::Deformed;
 use super::layout::Layout;
@@ -10,7 +13,7 @@ use super::predictor::{Predictor, Shifts};
 use super::spline::SplineImage;
 use super::validate::{MedianTest, fill};
 use crate::field::{Grid, Status, VectorField};
-use crate::frames::Scale;
+use crate::frames::{FrameError, Pair, Recording, Scale};
 use crate::task::{Cancelled, Task};
 
 /// Why a pair could not be interrogated.
@@ -44,9 +47,55 @@ pub enum InterrogateError {
         mask: String,
         image: String,
     },
+    /// A frame could not be read.
+    #[error(transparent)]
+    Frame(#[from] FrameError),
     /// The person who started it stopped it.
     #[error(transparent)]
     Cancelled(#[from] Cancelled),
+}
+
+/// Interrogates one pair: [`interrogate_images`] on its two exposures, in the units of its
+/// calibration.
+///
+/// # Errors
+/// [`InterrogateError`] when a frame cannot be read, sizes do not fit, or `task` was cancelled.
+pub fn interrogate(pair: &Pair, plan: &Plan, task: &Task) -> Result<VectorField, InterrogateError> {
+    let (first, second) = pair.load()?;
+    interrogate_images(
+        &first.pixels,
+        &second.pixels,
+        None,
+        plan,
+        &pair.scale(),
+        pair.label(),
+        task,
+    )
+}
+
+/// Interrogates every pair of a recording, over all cores; one field a pair, in order.
+///
+/// Reports progress in pairs. The fields do not depend on the number of threads.
+///
+/// # Errors
+/// [`InterrogateError`] of the first pair that fails, or when `task` was cancelled.
+pub fn interrogate_all(
+    recording: &Recording,
+    plan: &Plan,
+    task: &Task,
+) -> Result<Vec<VectorField>, InterrogateError> {
+    let total = recording.len();
+    let done = AtomicUsize::new(0);
+    task.report("pairs", 0, total);
+    recording
+        .pairs()
+        .par_iter()
+        .map(|pair| {
+            let field = interrogate(pair, plan, task)?;
+            task.report("pairs", done.fetch_add(1, Ordering::Relaxed) + 1, total);
+            Ok(field)
+        })
+        .collect()
 }
 
 /// Interrogates two exposures given as grey levels (row 0 at the top, equal shapes).
