@@ -30,7 +30,6 @@ impl Shifts {
     /// 1964), which leaves waves longer than 1.5 W nearly whole. Towards an edge the stretch
     /// shrinks evenly, so that a straight profile stays straight.
     pub fn smoothed(&self, layout: &Layout) -> Self {
-        let reach = |side: usize, step: usize| (5 * side) / (8 * step);
         let (rx, ry) = (
             reach(layout.window.width, layout.step_x),
             reach(layout.window.height, layout.step_y),
@@ -50,6 +49,24 @@ impl Shifts {
             y: smooth(&self.y),
         }
     }
+}
+
+/// What [`Shifts::smoothed`] leaves of a wave of `cycles` per window step along one axis.
+pub(crate) fn smoothing_response(side: usize, step: usize, cycles: f64) -> f64 {
+    let turn = std::f64::consts::TAU * cycles;
+    match reach(side, step) {
+        0 => 1.0,
+        1 => (14.0 + 2.0 * turn.cos()) / 16.0,
+        m => parabola_weights(m)
+            .enumerate()
+            .map(|(k, w)| w * (turn * (k as f64 - m as f64)).cos())
+            .sum(),
+    }
+}
+
+/// Windows on either side that the smoothing of the predictor takes in.
+fn reach(side: usize, step: usize) -> usize {
+    (5 * side) / (8 * step)
 }
 
 fn smooth_line(mut line: ArrayViewMut1<f64>, reach: usize) {

@@ -32,6 +32,18 @@ impl Taper {
         }
     }
 
+    /// Answer of a window to a wave of displacement of `cycles_per_px`.
+    pub fn response(&self, cycles_per_px: f64) -> f64 {
+        let middle = (self.weights.len() as f64 - 1.0) / 2.0;
+        let (mut sum, mut whole) = (0.0, 0.0);
+        for (i, w) in self.weights.iter().enumerate() {
+            let g = f64::from(*w).powi(2);
+            sum += g * (std::f64::consts::TAU * cycles_per_px * (i as f64 - middle)).cos();
+            whole += g;
+        }
+        sum / whole
+    }
+
     /// What is left of a pattern moved by `offset` px; never below a twentieth, so that noise far
     /// out is not blown up.
     pub fn left(&self, offset: isize) -> f32 {
