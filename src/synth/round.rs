@@ -9,7 +9,7 @@ use super::flow::above_zero;
 
 /// s with exp(s) = 1 + 2 s: (radius of largest speed / core radius)² of a Lamb-Oseen vortex,
 /// found by Newton's method in `the_radius_of_largest_speed_is_the_root_of_its_equation`.
-const LARGEST_SPEED_ROOT: f64 = 1.256_431_208_626_170;
+const LARGEST_SPEED_ROOT: f64 = 1.256_431_208_626_17;
 
 /// Velocity about (x0, y0) with angular velocity `rate` at (x, y).
 fn turning(x: f64, y: f64, x0: f64, y0: f64, rate: impl Fn(f64) -> f64) -> (f64, f64) {
