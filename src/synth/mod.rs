@@ -7,6 +7,7 @@
 //! Lengths and times of a flow are the caller's; images take them as px and frame. As everywhere,
 //! x points right, y points up, and vorticity is positive counter-clockwise.
 
+pub mod basin;
 mod camera;
 mod dipole;
 mod exposure;
