@@ -9,7 +9,8 @@ use crate::quantity::Unit;
 pub struct Frame {
     /// Grey levels, shape (rows, columns), row 0 at the top.
     pub pixels: Array2<f32>,
-    /// Bits a pixel in the file (8 or 16): grey levels run from 0 to 2^bits - 1.
+    /// Bits a grey level uses, 8 to 16: levels run from 0 to 2^bits - 1. That of the file's
+    /// pixels (8 or 16), or fewer where the file or the camera says so (12-bit cameras).
     pub bits: u8,
 }
 

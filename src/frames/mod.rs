@@ -1,7 +1,22 @@
 //! Images in: reading files, putting them in pairs, and what a pixel and a frame are worth.
 //!
-//! Frames load when they are used. Nothing here looks at what is in an image.
+//! Grey TIFF and PNG of 8 or 16 bits become a [`Frame`] with the grey levels as they stand in the
+//! file. A [`Recording`] is an ordered set of frames cut into [`Pair`]s; opening one looks only
+//! at names and headers, and frames load when they are used. Nothing here looks at what is in an
+//! image, and nothing here decides which folders may be read.
 
+mod error;
 mod frame;
+mod names;
+mod pair;
+mod png;
+mod read;
+mod recording;
+mod tiff;
 
+pub use error::FrameError;
 pub use frame::{Frame, Scale};
+pub use names::{matching_files, natural_order};
+pub use pair::Pair;
+pub use read::{read_frames, read_page};
+pub use recording::{Order, Recording, RecordingOptions};

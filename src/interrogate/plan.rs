@@ -1,0 +1,168 @@
+//! How a pair is interrogated: the windows of each pass and the limits of validation.
+
+use serde::{Deserialize, Deserializer, Serialize};
+
+/// Width and height of an interrogation window, px.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, Serialize)]
+pub struct WindowSize {
+    /// Columns.
+    pub width: usize,
+    /// Rows.
+    pub height: usize,
+}
+
+impl<'de> Deserialize<'de> for WindowSize {
+    /// One number for a square window, `[width, height]` for any other.
+    fn deserialize<D: Deserializer<'de>>(from: D) -> Result<Self, D::Error> {
+        #[derive(Deserialize)]
+        #[serde(
+            untagged,
+            expecting = "a window is one whole number of px, or [width, height]"
+        )]
+        enum Form {
+            Square(usize),
+            Sides([usize; 2]),
+        }
+        Ok(match Form::deserialize(from)? {
+            Form::Square(side) => WindowSize {
+                width: side,
+                height: side,
+            },
+            Form::Sides([width, height]) => WindowSize { width, height },
+        })
+    }
+}
+
+/// The options of [`Plan::new`], as a script gives them.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(default, deny_unknown_fields)]
+pub struct PlanOptions {
+    /// Window of each pass, px: a number for a square, `[width, height]` otherwise.
+    pub windows_px: Vec<WindowSize>,
+    /// Share of a window that its neighbour also covers, 0 to 0.95.
+    pub overlap: f64,
+    /// Normalized median residual above which a vector is rejected (Westerweel & Scarano 2005).
+    pub median_limit: f64,
+    /// Displacement noise the median test tolerates, px: its small number in the denominator.
+    pub median_floor_px: f64,
+    /// Share of a window that must be inside the image and outside masks, 0 to 1.
+    pub least_lit: f64,
+}
+
+impl Default for PlanOptions {
+    fn default() -> Self {
+        let square = |side| WindowSize {
+            width: side,
+            height: side,
+        };
+        Self {
+            windows_px: vec![square(64), square(32), square(32), square(32)],
+            overlap: 0.75,
+            median_limit: 2.0,
+            median_floor_px: 0.1,
+            least_lit: 0.5,
+        }
+    }
+}
+
+/// What is wrong with the options of a plan.
+#[derive(Clone, Debug, PartialEq, thiserror::Error)]
+pub enum PlanError {
+    /// No pass at all.
+    #[error("windows_px is empty: give the window of each pass, such as [64, 32, 32]")]
+    NoPass,
+    /// A window outside what can be correlated.
+    #[error(
+        "windows_px has a window of {width} x {height} px: each side must be 4 to 1024 px and even"
+    )]
+    Window {
+        /// Columns asked for.
+        width: usize,
+        /// Rows asked for.
+        height: usize,
+    },
+    /// An option out of its range.
+    #[error("{name} is {value}: it must be {range}")]
+    Range {
+        /// The option.
+        name: &'static str,
+        /// Its value.
+        value: f64,
+        /// The values allowed.
+        range: &'static str,
+    },
+}
+
+/// A checked plan.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Plan {
+    options: PlanOptions,
+}
+
+impl Plan {
+    /// Checks the options.
+    ///
+    /// # Errors
+    /// [`PlanError`] naming the option that cannot be used.
+    pub fn new(options: &PlanOptions) -> Result<Self, PlanError> {
+        if options.windows_px.is_empty() {
+            return Err(PlanError::NoPass);
+        }
+        for &WindowSize { width, height } in &options.windows_px {
+            if [width, height]
+                .iter()
+                .any(|side| !(4..=1024).contains(side) || side % 2 != 0)
+            {
+                return Err(PlanError::Window { width, height });
+            }
+        }
+        let within = |name, value: f64, low, high, range| {
+            if value >= low && value <= high {
+                Ok(())
+            } else {
+                Err(PlanError::Range { name, value, range })
+            }
+        };
+        within("overlap", options.overlap, 0.0, 0.95, "0 to 0.95")?;
+        let limit = options.median_limit;
+        within("median_limit", limit, 0.1, 1e6, "0.1 or more")?;
+        let floor = options.median_floor_px;
+        within("median_floor_px", floor, 0.001, 100.0, "0.001 to 100 px")?;
+        within("least_lit", options.least_lit, 0.1, 1.0, "0.1 to 1")?;
+        Ok(Self {
+            options: options.clone(),
+        })
+    }
+
+    /// The options the plan was made from.
+    pub fn options(&self) -> &PlanOptions {
+        &self.options
+    }
+
+    /// Windows of the passes, in order; never empty.
+    pub fn windows(&self) -> &[WindowSize] {
+        &self.options.windows_px
+    }
+}
+
+impl std::fmt::Display for Plan {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        let windows: Vec<String> = self
+            .windows()
+            .iter()
+            .map(|w| {
+                if w.width == w.height {
+                    w.width.to_string()
+                } else {
+                    format!("{}x{}", w.width, w.height)
+                }
+            })
+            .collect();
+        write!(
+            f,
+            "plan: windows {} px, overlap {}",
+            windows.join(", "),
+            self.options.overlap
+        )
+    }
+}

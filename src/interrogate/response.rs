@@ -1,0 +1,171 @@
+//! What the passes of a plan make of a wave: of a true one, and of noise.
+//!
+//! A window of weight g answers a wave of displacement with S, the transform of g. A pass adds
+//! S (truth - prediction) to the prediction, and the prediction is the smoothed result of the
+//! pass before, F T. So T grows from pass to pass as T' = S + (1 - S) F T. Noise enters a window
+//! by the same weights as displacement, so T is also what the passes make of noise: its spectrum
+//! gives the gain against a single pass and the correlation of errors between neighbours.
+
+use super::layout::Layout;
+use super::predictor::smoothing_response;
+use super::taper::Taper;
+
+/// Wave numbers along each axis from 0 to half a cycle a px, in steps.
+const STEPS: usize = 96;
+
+/// The transfer of waves by a sequence of passes, on a lattice of wave numbers.
+#[derive(Clone, Debug)]
+pub(crate) struct Response {
+    /// Largest wave number of the lattice, cycles a px, on each axis.
+    limit: (f64, f64),
+    /// Transfer at (row: along y, column: along x).
+    transfer: Vec<f64>,
+    /// Transfer of the last window alone.
+    single: Vec<f64>,
+}
+
+impl Response {
+    /// Follows the passes laid out by `layouts`.
+    pub fn new(layouts: &[Layout]) -> Option<Self> {
+        let last = layouts.last()?;
+        // The weights end a window's spectrum well before four cycles a window.
+        let limit = |side: usize| (4.0 / side as f64).min(0.5);
+        let limit = (limit(last.window.width), limit(last.window.height));
+        let mut transfer: Option<Vec<f64>> = None;
+        let mut single = Vec::new();
+        let mut before: Option<&Layout> = None;
+        for layout in layouts {
+            let [x, y] = [
+                (limit.0, layout.window.width),
+                (limit.1, layout.window.height),
+            ]
+            .map(|(limit, side)| {
+                let taper = Taper::new(side);
+                (0..STEPS)
+                    .map(|k| taper.response(limit * k as f64 / (STEPS - 1) as f64))
+                    .collect::<Vec<_>>()
+            });
+            single = outer(&y, &x);
+            transfer = Some(match (&transfer, before) {
+                (Some(old), Some(before)) => {
+                    let f = smoothing(before, limit);
+                    old.iter()
+                        .zip(&single)
+                        .zip(&f)
+                        .map(|((t, s), f)| s + (1.0 - s) * f * t)
+                        .collect()
+                }
+                _ => single.clone(),
+            });
+            before = Some(layout);
+        }
+        Some(Self {
+            limit,
+            transfer: transfer?,
+            single,
+        })
+    }
+
+    /// Ratio of the random error after all passes to that of the last window alone.
+    pub fn gain(&self) -> f64 {
+        let power = |t: &[f64]| self.sum(t, |_, _| 1.0);
+        (power(&self.transfer) / power(&self.single)).sqrt()
+    }
+
+    /// Correlation of the errors of two vectors (dx, dy) px apart.
+    pub fn correlation(&self, dx: f64, dy: f64) -> f64 {
+        let turn = std::f64::consts::TAU;
+        self.sum(&self.transfer, |kx, ky| {
+            (turn * kx * dx).cos() * (turn * ky * dy).cos()
+        }) / self.sum(&self.transfer, |_, _| 1.0)
+    }
+
+    /// Amplitude found of a wave along one axis with this length, px.
+    pub fn amplitude(&self, wavelength_px: f64) -> f64 {
+        let k = 1.0 / wavelength_px / self.limit.0 * (STEPS - 1) as f64;
+        let low = (k.floor() as usize).min(STEPS - 2);
+        let t = (k - low as f64).min(1.0);
+        self.transfer[low] * (1.0 - t) + self.transfer[low + 1] * t
+    }
+
+    /// Trapezoidal sum over the lattice of the squared transfer times `f(kx, ky)`.
+    fn sum(&self, transfer: &[f64], f: impl Fn(f64, f64) -> f64) -> f64 {
+        let end = |k: usize| if k == 0 || k == STEPS - 1 { 0.5 } else { 1.0 };
+        let mut sum = 0.0;
+        for j in 0..STEPS {
+            for i in 0..STEPS {
+                let t = transfer[j * STEPS + i];
+                let at = |k: usize, limit: f64| limit * k as f64 / (STEPS - 1) as f64;
+                sum += end(i) * end(j) * t * t * f(at(i, self.limit.0), at(j, self.limit.1));
+            }
+        }
+        sum
+    }
+}
+
+fn outer(rows: &[f64], columns: &[f64]) -> Vec<f64> {
+    rows.iter()
+        .flat_map(|r| columns.iter().map(move |c| r * c))
+        .collect()
+}
+
+/// Response of the predictor's smoothing; nothing passes that the grid of windows cannot carry.
+fn smoothing(layout: &Layout, limit: (f64, f64)) -> Vec<f64> {
+    let along = |limit: f64, side: usize, step: usize| {
+        (0..STEPS)
+            .map(|k| {
+                let cycles = limit * k as f64 / (STEPS - 1) as f64 * step as f64;
+                if cycles > 0.5 {
+                    0.0
+                } else {
+                    smoothing_response(side, step, cycles)
+                }
+            })
+            .collect::<Vec<_>>()
+    };
+    outer(
+        &along(limit.1, layout.window.height, layout.step_y),
+        &along(limit.0, layout.window.width, layout.step_x),
+    )
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::interrogate::plan::WindowSize;
+
+    fn layouts(passes: &[usize], overlap: f64) -> Vec<Layout> {
+        passes
+            .iter()
+            .map(|&side| {
+                let window = WindowSize {
+                    width: side,
+                    height: side,
+                };
+                Layout::new(window, overlap, 512, 512).unwrap()
+            })
+            .collect()
+    }
+
+    #[test]
+    fn one_pass_has_no_gain_and_the_correlation_of_its_overlap() {
+        let response = Response::new(&layouts(&[32], 0.5)).unwrap();
+        assert!((response.gain() - 1.0).abs() < 1e-12);
+        assert!((response.correlation(0.0, 0.0) - 1.0).abs() < 1e-12);
+        // Weights 1 - t² on [-1, 1] shifted by half a side (t by 1):
+        // ∫(1 - t²)(1 - (t - 1)²) over [0, 1] / ∫(1 - t²)² = (11/30)/(16/15) = 0.34375.
+        assert!((response.correlation(16.0, 0.0) - 0.343_75).abs() < 0.01);
+        assert!(response.correlation(40.0, 0.0).abs() < 0.01);
+    }
+
+    #[test]
+    fn repeated_passes_settle() {
+        let few = Response::new(&layouts(&[64, 32, 32, 32], 0.75)).unwrap();
+        let many = Response::new(&layouts(&[64, 32, 32, 32, 32, 32, 32, 32, 32], 0.75)).unwrap();
+        let most =
+            Response::new(&layouts(&[64, 32, 32, 32, 32, 32, 32, 32, 32, 32], 0.75)).unwrap();
+        assert!(many.gain() < 1.15 * few.gain());
+        assert!((many.gain() - most.gain()).abs() < 1e-3);
+        assert!(many.amplitude(48.0) > few.amplitude(48.0));
+    }
+}

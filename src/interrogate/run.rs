@@ -1,0 +1,323 @@
+//! From a pair or a recording to vector fields.
+
+use std::sync::atomic::{AtomicUsize, Ordering};
+
+use ndarray::Array2;
+use rayon::prelude::*;
+
+use super::deform::Deformed;
+use super::layout::Layout;
+use super::pass::{Finding, correlate};
+use super::plan::{Plan, WindowSize};
+use super::predictor::{Predictor, Shifts};
+use super::spline::SplineImage;
+use super::validate::{MedianTest, fill};
+use crate::field::{Grid, Status, VectorField};
+use crate::frames::{FrameError, Pair, Recording, Scale};
+use crate::task::{Cancelled, Task};
+
+/// Why a pair could not be interrogated.
+#[derive(Debug, thiserror::Error)]
+pub enum InterrogateError {
+    /// The image is smaller than the window.
+    #[error(
+        "{label}: the image is {width} x {height} px, smaller than the window of {window_width} x {window_height} px; choose a smaller window in windows_px"
+    )]
+    #[allow(missing_docs)]
+    ImageTooSmall {
+        label: String,
+        width: usize,
+        height: usize,
+        window_width: usize,
+        window_height: usize,
+    },
+    /// The two exposures differ in size.
+    #[error("{label}: the exposures differ in size, {first} and {second} px")]
+    #[allow(missing_docs)]
+    SizesDiffer {
+        label: String,
+        first: String,
+        second: String,
+    },
+    /// The mask does not fit the image.
+    #[error("{label}: the mask is {mask} px, the image {image} px")]
+    #[allow(missing_docs)]
+    MaskSize {
+        label: String,
+        mask: String,
+        image: String,
+    },
+    /// A frame could not be read.
+    #[error(transparent)]
+    Frame(#[from] FrameError),
+    /// The person who started it stopped it.
+    #[error(transparent)]
+    Cancelled(#[from] Cancelled),
+}
+
+/// Interrogates one pair: [`interrogate_images`] on its two exposures, in the units of its
+/// calibration.
+///
+/// # Errors
+/// [`InterrogateError`] when a frame cannot be read, sizes do not fit, or `task` was cancelled.
+pub fn interrogate(pair: &Pair, plan: &Plan, task: &Task) -> Result<VectorField, InterrogateError> {
+    let (first, second) = pair.load()?;
+    interrogate_images(
+        &first.pixels,
+        &second.pixels,
+        None,
+        plan,
+        &pair.scale(),
+        pair.label(),
+        task,
+    )
+}
+
+/// Interrogates every pair of a recording, over all cores; one field a pair, in order.
+///
+/// Reports progress in pairs. The fields do not depend on the number of threads.
+///
+/// # Errors
+/// [`InterrogateError`] of the first pair that fails, or when `task` was cancelled.
+pub fn interrogate_all(
+    recording: &Recording,
+    plan: &Plan,
+    task: &Task,
+) -> Result<Vec<VectorField>, InterrogateError> {
+    let total = recording.len();
+    let done = AtomicUsize::new(0);
+    task.report("pairs", 0, total);
+    recording
+        .pairs()
+        .par_iter()
+        .map(|pair| {
+            let field = interrogate(pair, plan, task)?;
+            task.report("pairs", done.fetch_add(1, Ordering::Relaxed) + 1, total);
+            Ok(field)
+        })
+        .collect()
+}
+
+/// Interrogates two exposures given as grey levels (row 0 at the top, equal shapes).
+///
+/// Pixels where `mask` is true are used by no window. The result is on the grid of the plan's
+/// last pass, y up, in mm and s when `scale` is a calibration and in px and frames otherwise.
+/// Each vector is the displacement of its window's pattern over the frame interval, at the mid
+/// time and at the window's centre, divided by the interval.
+///
+/// # Errors
+/// [`InterrogateError`] when sizes do not fit, or when `task` was cancelled.
+pub fn interrogate_images(
+    first: &Array2<f32>,
+    second: &Array2<f32>,
+    mask: Option<&Array2<bool>>,
+    plan: &Plan,
+    scale: &Scale,
+    label: &str,
+    task: &Task,
+) -> Result<VectorField, InterrogateError> {
+    let (height, width) = first.dim();
+    let size = |(h, w): (usize, usize)| format!("{w} x {h}");
+    if second.dim() != first.dim() {
+        return Err(InterrogateError::SizesDiffer {
+            label: label.to_owned(),
+            first: size(first.dim()),
+            second: size(second.dim()),
+        });
+    }
+    if let Some(mask) = mask
+        && mask.dim() != first.dim()
+    {
+        return Err(InterrogateError::MaskSize {
+            label: label.to_owned(),
+            mask: size(mask.dim()),
+            image: size(first.dim()),
+        });
+    }
+    let layouts = layouts(plan, width, height, label)?;
+    let mut splines: Option<[SplineImage; 2]> = None;
+    let mut known: Option<(Shifts, Layout)> = None;
+    let mut last = None;
+    for (pass, layout) in layouts.iter().enumerate() {
+        task.check()?;
+        let (predictor, images) = match &known {
+            None => (None, Deformed::untouched(first, second, mask)),
+            Some((shifts, on)) => {
+                let [a, b] = splines
+                    .get_or_insert_with(|| [SplineImage::new(first), SplineImage::new(second)]);
+                let predictor = Predictor::new(&shifts.smoothed(on), on, width, height);
+                let images = Deformed::new(a, b, &predictor, mask, (height, width));
+                (Some((predictor, *on)), images)
+            }
+        };
+        let reach = reach(layout.window, pass == 0);
+        let findings = correlate(&images, layout, reach, task)?;
+        let judged = judge(&findings, layout, predictor.as_ref(), plan);
+        known = Some((judged.shifts.clone(), *layout));
+        last = Some((judged, *layout));
+    }
+    match last {
+        Some((judged, layout)) => Ok(finish(judged, &layout, height, scale, label)),
+        None => unreachable!("a plan has at least one pass"),
+    }
+}
+
+fn layouts(
+    plan: &Plan,
+    width: usize,
+    height: usize,
+    label: &str,
+) -> Result<Vec<Layout>, InterrogateError> {
+    plan.windows()
+        .iter()
+        .map(|&window| {
+            Layout::new(window, plan.options().overlap, width, height).ok_or_else(|| {
+                InterrogateError::ImageTooSmall {
+                    label: label.to_owned(),
+                    width,
+                    height,
+                    window_width: window.width,
+                    window_height: window.height,
+                }
+            })
+        })
+        .collect()
+}
+
+/// How far a peak is sought: half the window while nothing is known, a quarter of it once a
+/// predictor carries the bulk of the motion.
+fn reach(window: WindowSize, first: bool) -> (usize, usize) {
+    let along = |side: usize| {
+        if first {
+            side / 2 - 1
+        } else {
+            (side / 4).max(2).min(side / 2 - 1)
+        }
+    };
+    (along(window.width), along(window.height))
+}
+
+/// The vectors of one pass after validation.
+struct Judged {
+    shifts: Shifts,
+    status: Array2<Status>,
+}
+
+/// Adds residuals to the predictor, rejects what stands out, and fills the gaps.
+fn judge(
+    findings: &Array2<Finding>,
+    layout: &Layout,
+    predictor: Option<&(Predictor, Layout)>,
+    plan: &Plan,
+) -> Judged {
+    let options = plan.options();
+    let mut predicted = Shifts::zero(layout.shape());
+    if let Some((predictor, on)) = predictor {
+        for j in 0..layout.rows {
+            for i in 0..layout.columns {
+                let x = layout.first_x() + (i * layout.step_x) as f64;
+                let y = layout.first_y() + (j * layout.step_y) as f64;
+                (predicted.x[(j, i)], predicted.y[(j, i)]) = predictor.at(x, y, on);
+            }
+        }
+    }
+    let mut shifts = predicted.clone();
+    for (at, finding) in findings.indexed_iter() {
+        shifts.x[at] += finding.shift.0;
+        shifts.y[at] += finding.shift.1;
+    }
+    let lit = findings.map(|f| f64::from(f.lit) >= options.least_lit);
+    let signal = findings.map(|f| f64::from(f.lit) >= options.least_lit && f.height > 0.0);
+    let test = MedianTest {
+        limit: options.median_limit,
+        floor_px: options.median_floor_px,
+    };
+    let mut good = signal.clone();
+    // The second round judges among what the first one left.
+    for _ in 0..2 {
+        let before = good.clone();
+        for (at, candidate) in signal.indexed_iter() {
+            if *candidate {
+                let d = (shifts.x[at], shifts.y[at]);
+                good[at] = test.fits(&shifts, &before, at, d);
+            }
+        }
+    }
+    // A peak drowned by a chance one may still be the second highest.
+    let accepted = good.clone();
+    for (at, finding) in findings.indexed_iter() {
+        if signal[at] && !accepted[at] && finding.second.1 > 0.0 {
+            let d = (
+                predicted.x[at] + finding.second.0.0,
+                predicted.y[at] + finding.second.0.1,
+            );
+            // Whole px: half a px of slack on each axis before the test's own limit.
+            let near = MedianTest {
+                floor_px: test.floor_px + 0.25,
+                ..test
+            };
+            if near.fits(&shifts, &accepted, at, d) {
+                (shifts.x[at], shifts.y[at]) = d;
+            }
+        }
+    }
+    fill(&mut shifts, &good);
+    let status = Array2::from_shape_fn(layout.shape(), |at| {
+        if good[at] {
+            Status::Measured
+        } else if !lit[at] {
+            Status::Outside
+        } else {
+            Status::Replaced
+        }
+    });
+    Judged { shifts, status }
+}
+
+/// Turns the last pass into a field with y up and the units of the calibration.
+fn finish(
+    judged: Judged,
+    layout: &Layout,
+    height: usize,
+    scale: &Scale,
+    label: &str,
+) -> VectorField {
+    let (length, mm) = scale.length();
+    let (time, dt) = scale.time();
+    let lowest = layout.first_y() + ((layout.rows - 1) * layout.step_y) as f64;
+    let grid = Grid {
+        nx: layout.columns,
+        ny: layout.rows,
+        x0: layout.first_x() * mm,
+        y0: (height as f64 - 1.0 - lowest) * mm,
+        dx: layout.step_x as f64 * mm,
+        dy: layout.step_y as f64 * mm,
+        length,
+    };
+    let flip = |(j, i): (usize, usize)| (layout.rows - 1 - j, i);
+    let status = Array2::from_shape_fn(grid.shape(), |at| judged.status[flip(at)]);
+    let take = |values: &Array2<f64>, factor: f64| {
+        Array2::from_shape_fn(grid.shape(), |at| {
+            if status[at].has_vector() {
+                values[flip(at)] * factor
+            } else {
+                f64::NAN
+            }
+        })
+    };
+    let u = take(&judged.shifts.x, mm / dt);
+    let v = take(&judged.shifts.y, -mm / dt);
+    VectorField {
+        grid,
+        time,
+        u,
+        v,
+        status,
+        unc: None,
+        window: Some((
+            layout.window.width as f64 * mm,
+            layout.window.height as f64 * mm,
+        )),
+        label: label.to_owned(),
+    }
+}

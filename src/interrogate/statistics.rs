@@ -1,0 +1,209 @@
+//! How much a vector may be off, from the two windows that gave it.
+//!
+//! After the last deformation the two exposures of a window should be the same but for noise.
+//! What differs makes the correlation peak lean: each pixel adds
+//! c = a(x) b(x + 1) - a(x + 1) b(x) to the difference between the samples right and left of the
+//! peak. The sum of c is near zero where the peak is centred; its variance, with the covariance
+//! of neighbouring pixels, is the variance of that difference, and the three-point fit turns it
+//! into px (Wieneke 2015, Meas. Sci. Technol. 26, 074002).
+
+use super::transform::BATCH;
+
+/// One value a lane.
+pub(crate) type Lanes = [f32; BATCH];
+
+/// Pixels on either side over which the contributions of neighbours are taken to be correlated:
+/// a little more than the width of a usual particle image.
+const REACH: usize = 3;
+
+/// The part of [`Lean`] that belongs to one axis.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Lean {
+    /// Variance of the difference between the samples on either side of the peak.
+    pub variance: Lanes,
+}
+
+/// Room for the sums of one window batch.
+pub(crate) struct StatisticsScratch {
+    soft: Vec<Lanes>,
+    lean: Vec<Lanes>,
+    sums: Vec<Lanes>,
+}
+
+impl StatisticsScratch {
+    /// Room for windows of `pixels` px.
+    pub fn new(pixels: usize) -> Self {
+        Self {
+            soft: vec![[0.0; BATCH]; pixels],
+            lean: vec![[0.0; BATCH]; pixels],
+            sums: vec![[0.0; BATCH]; pixels],
+        }
+    }
+}
+
+/// Variance of (right minus left) and of (below minus above) samples of the smoothed peak, for a
+/// batch of windows `a` and `b` of `width` columns, row after row.
+#[multiversion::multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
+pub(crate) fn lean_variance(
+    a: &[Lanes],
+    b: &[Lanes],
+    width: usize,
+    scratch: &mut StatisticsScratch,
+) -> [Lean; 2] {
+    let height = a.len() / width;
+    soften(b, width, &mut scratch.soft);
+    [(0, 1), (1, 0)].map(|(down, right)| {
+        let (rows, columns) = (height - down, width - right);
+        let lean = &mut scratch.lean[..rows * columns];
+        let mut mean = [0f32; BATCH];
+        for r in 0..rows {
+            let here = r * width;
+            let next = (r + down) * width + right;
+            for c in 0..columns {
+                let (a0, a1) = (&a[here + c], &a[next + c]);
+                let (b0, b1) = (&scratch.soft[here + c], &scratch.soft[next + c]);
+                let out = &mut lean[r * columns + c];
+                for l in 0..BATCH {
+                    out[l] = a0[l] * b1[l] - a1[l] * b0[l];
+                    mean[l] += out[l];
+                }
+            }
+        }
+        let n = (rows * columns) as f32;
+        for cell in lean.iter_mut() {
+            for l in 0..BATCH {
+                cell[l] -= mean[l] / n;
+            }
+        }
+        Lean {
+            variance: spread(lean, columns, &mut scratch.sums),
+        }
+    })
+}
+
+/// Smooths as the peak is smoothed: (1, 6, 1)/8 along rows and columns, edges left as they are.
+#[inline(always)]
+fn soften(from: &[Lanes], width: usize, to: &mut [Lanes]) {
+    const NEAR: f32 = 0.125;
+    let height = from.len() / width;
+    to.copy_from_slice(from);
+    for r in 1..height - 1 {
+        for c in 1..width - 1 {
+            let p = r * width + c;
+            let mut sum = [0f32; BATCH];
+            for (k, wy) in [NEAR, 1.0 - 2.0 * NEAR, NEAR].into_iter().enumerate() {
+                let q = p + k * width - width;
+                for l in 0..BATCH {
+                    sum[l] += wy
+                        * (NEAR * (from[q - 1][l] + from[q + 1][l])
+                            + (1.0 - 2.0 * NEAR) * from[q][l]);
+                }
+            }
+            to[p] = sum;
+        }
+    }
+}
+
+/// Sum over pixels of each value times the sum of all values within [`REACH`] of it: the
+/// variance of the total, covariance of neighbours included.
+#[inline(always)]
+fn spread(values: &[Lanes], width: usize, sums: &mut [Lanes]) -> Lanes {
+    let height = values.len() / width;
+    // Running sums along each row, then along columns.
+    for r in 0..height {
+        let row = &values[r * width..(r + 1) * width];
+        let mut run = [0f32; BATCH];
+        for cell in &row[..REACH.min(width)] {
+            for l in 0..BATCH {
+                run[l] += cell[l];
+            }
+        }
+        for c in 0..width {
+            if c + REACH < width {
+                for l in 0..BATCH {
+                    run[l] += row[c + REACH][l];
+                }
+            }
+            if c > REACH {
+                for l in 0..BATCH {
+                    run[l] -= row[c - REACH - 1][l];
+                }
+            }
+            sums[r * width + c] = run;
+        }
+    }
+    let mut total = [0f32; BATCH];
+    for c in 0..width {
+        let mut run = [0f32; BATCH];
+        for r in 0..REACH.min(height) {
+            for l in 0..BATCH {
+                run[l] += sums[r * width + c][l];
+            }
+        }
+        for r in 0..height {
+            if r + REACH < height {
+                for l in 0..BATCH {
+                    run[l] += sums[(r + REACH) * width + c][l];
+                }
+            }
+            if r > REACH {
+                for l in 0..BATCH {
+                    run[l] -= sums[(r - REACH - 1) * width + c][l];
+                }
+            }
+            for l in 0..BATCH {
+                total[l] += run[l] * values[r * width + c][l];
+            }
+        }
+    }
+    total
+}
+
+/// Standard uncertainty, px, of the three-point fit whose middle sample is `top` and whose side
+/// samples average `side`, when their difference has this variance; `None` where there is no
+/// peak to speak of.
+pub(crate) fn uncertainty(variance: f32, top: f32, side: f32) -> Option<f64> {
+    if !(variance >= 0.0 && side > 0.0 && top > side) {
+        return None;
+    }
+    let (variance, top, side) = (f64::from(variance), f64::from(top), f64::from(side));
+    Some(variance.sqrt() / (4.0 * side * (top / side).ln()))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_spread_is_the_plain_double_sum() {
+        let (width, height) = (9, 11);
+        let values: Vec<Lanes> = (0..width * height)
+            .map(|i| std::array::from_fn(|l| ((i * 7 + l * 13) % 23) as f32 - 11.0))
+            .collect();
+        let mut sums = vec![[0.0; BATCH]; width * height];
+        let fast = spread(&values, width, &mut sums);
+        for l in 0..BATCH {
+            let mut slow = 0.0;
+            for i in 0..width * height {
+                for k in 0..width * height {
+                    let near = (i / width).abs_diff(k / width) <= REACH
+                        && (i % width).abs_diff(k % width) <= REACH;
+                    if near {
+                        slow += values[i][l] * values[k][l];
+                    }
+                }
+            }
+            assert!((fast[l] - slow).abs() < 1e-3 * slow.abs().max(1.0));
+        }
+    }
+
+    #[test]
+    fn the_uncertainty_is_the_slope_of_the_three_point_fit() {
+        use crate::interrogate::peak::three_point;
+        let (top, side, small) = (1.0f32, 0.6f32, 1e-3f32);
+        let d = three_point([side - small / 2.0, top, side + small / 2.0]);
+        let u = uncertainty(small * small, top, side).unwrap();
+        assert!((d - u).abs() < 1e-6);
+        assert_eq!(uncertainty(1.0, 0.5, 0.6), None);
+    }
+}
