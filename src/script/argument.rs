@@ -8,7 +8,7 @@ use rhai::{Array, Dynamic, FLOAT, INT, ImmutableString, Map};
 use super::call::Call;
 use super::fault::Fault;
 use super::kind::{Kind, kind_name, number, with_article};
-use super::options::{OptionKey, Optional, Options, read};
+use super::options::{Needed, OptionKey, Optional, Options, read};
 
 /// What may be given for one parameter.
 #[derive(Clone, Debug)]
@@ -21,6 +21,9 @@ pub struct Shape {
     pub options: Option<fn() -> &'static [OptionKey]>,
     /// True for what is no parameter of the script: the call itself.
     pub(super) hidden: bool,
+    /// Where the documented options and the struct that reads them part ways.
+    #[cfg(test)]
+    pub(super) differences: Option<fn() -> Vec<String>>,
 }
 
 impl Shape {
@@ -30,6 +33,8 @@ impl Shape {
             optional: false,
             options: None,
             hidden: false,
+            #[cfg(test)]
+            differences: None,
         }
     }
 }
@@ -256,27 +261,44 @@ impl<T: Argument> Argument for Option<T> {
     }
 }
 
-impl<T: Options + 'static> Argument for Optional<T> {
+fn options_shape<T: Options>(optional: bool) -> Shape {
+    Shape {
+        optional,
+        options: Some(T::keys),
+        #[cfg(test)]
+        differences: Some(super::options::differences::<T>),
+        ..Shape::of("map of options")
+    }
+}
+
+fn read_options<T: Options>(given: Option<&mut Dynamic>) -> Result<T, Fault> {
+    let wanted = "map of options, such as #{ key: value }";
+    let map = taken(wanted, given, |value| {
+        value.as_map_ref().ok().map(|map| map.clone())
+    })?;
+    read(&map)
+}
+
+impl<T: Options + Default + 'static> Argument for Optional<T> {
     fn shape() -> Shape {
-        Shape {
-            optional: true,
-            options: Some(T::keys),
-            ..Shape::of("map of options")
-        }
+        options_shape::<T>(true)
     }
 
     fn take(given: Option<&mut Dynamic>, _: &Call) -> Result<Self, Fault> {
         match given {
             None => Ok(Optional(T::default())),
-            Some(value) => {
-                let map = taken(
-                    "map of options, such as #{ key: value }",
-                    Some(value),
-                    |value| value.as_map_ref().ok().map(|map| map.clone()),
-                )?;
-                read(&map).map(Optional)
-            }
+            given => read_options(given).map(Optional),
         }
+    }
+}
+
+impl<T: Options + 'static> Argument for Needed<T> {
+    fn shape() -> Shape {
+        options_shape::<T>(false)
+    }
+
+    fn take(given: Option<&mut Dynamic>, _: &Call) -> Result<Self, Fault> {
+        read_options(given).map(Needed)
     }
 }
 

@@ -2,9 +2,10 @@
 
 use std::any::TypeId;
 use std::marker::PhantomData;
+use std::rc::Rc;
 use std::sync::Arc;
 
-use rhai::{Dynamic, Engine};
+use rhai::{Dynamic, Engine, Module};
 
 use super::argument::Shape;
 use super::bind_fn::{BindFunction, BindMethod};
@@ -334,5 +335,13 @@ fn register_kind<T: Kind>(engine: &mut Engine) {
     engine.register_type_with_name::<Arc<T>>(T::NAME);
     for name in ["to_string", "to_debug"] {
         engine.register_fn(name, |held: &mut Arc<T>| held.show());
+    }
+    if T::HAS_ITEMS {
+        let mut module = Module::new();
+        module.set_iter(TypeId::of::<Arc<T>>(), |held| {
+            let items = held.try_cast::<Arc<T>>().map(|held| held.items());
+            Box::new(items.unwrap_or_default().into_iter())
+        });
+        engine.register_global_module(Rc::new(module));
     }
 }

@@ -18,6 +18,14 @@ pub trait Kind: Sized + 'static {
     const ABOUT: &'static str;
     /// The short summary a prompt shows and `print` prints.
     fn show(&self) -> String;
+
+    /// What `for` goes through, in order; empty for a kind it cannot go through.
+    fn items(&self) -> Vec<Dynamic> {
+        Vec::new()
+    }
+
+    /// True for a kind that `for` can go through.
+    const HAS_ITEMS: bool = false;
 }
 
 /// What a method, property or operator can belong to: any [`Kind`], or a plain value.

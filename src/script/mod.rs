@@ -57,7 +57,7 @@ pub use kind::{Kind, Subject};
 pub(crate) use language::read_script;
 pub use language::{Language, on_a_big_stack};
 pub use number::number_text;
-pub use options::{OptionKey, Optional, Options};
+pub use options::{Needed, OptionKey, Optional, Options};
 pub use record::{Example, Form, Input, Outcome, Record};
 pub use registry::Registry;
 pub use sandbox::{Sandbox, SandboxError};

@@ -25,8 +25,9 @@ pub struct OptionKey {
     pub about: &'static str,
 }
 
-/// A struct that an option map is read into. Written with the [`options!`](crate::options) macro.
-pub trait Options: DeserializeOwned + Default {
+/// A struct that an option map is read into: written whole with [`options!`](crate::options), or
+/// a kernel's own struct documented with [`option_keys!`](crate::option_keys).
+pub trait Options: DeserializeOwned + std::fmt::Debug {
     /// The keys of the map, in the order they are documented.
     fn keys() -> &'static [OptionKey];
 }
@@ -34,6 +35,32 @@ pub trait Options: DeserializeOwned + Default {
 /// An option map that may be left out of a call.
 #[derive(Clone, Debug, Default)]
 pub struct Optional<T>(pub T);
+
+/// An option map that a call must have, because one of its keys has no default.
+#[derive(Clone, Debug)]
+pub struct Needed<T>(pub T);
+
+/// Documents the options a kernel's own struct reads: kind, unit, default as a script would write
+/// it (`none` where there is none, `needed` where the key must be given), meaning. A test holds
+/// the keys and defaults against the struct.
+#[macro_export]
+macro_rules! option_keys {
+    ($type:ty {
+        $( $key:ident : $kind:literal, $unit:literal, $default:literal, $about:literal ; )*
+    }) => {
+        impl $crate::script::Options for $type {
+            fn keys() -> &'static [$crate::script::OptionKey] {
+                &[ $( $crate::script::OptionKey {
+                    name: stringify!($key),
+                    kind: $kind,
+                    default: $default,
+                    unit: $unit,
+                    about: $about,
+                }, )* ]
+            }
+        }
+    };
+}
 
 /// Declares a struct of options: fields, defaults, units and meanings in one place.
 ///
@@ -89,7 +116,7 @@ impl OptionKey {
         if text == "None" {
             return "none".to_owned();
         }
-        for (open, close) in [("Some(", ")"), ("vec!", ""), ("String::from(", ")")] {
+        for (open, close) in [("Some(", ")"), ("vec!", "")] {
             if let Some(inner) = text.strip_prefix(open).and_then(|t| t.strip_suffix(close)) {
                 text = inner;
             }
@@ -131,12 +158,49 @@ pub(super) fn read<T: Options>(map: &Map) -> Result<T, Fault> {
     let given = Value::Object(object);
     serde_path_to_error::deserialize(&given).map_err(|error| {
         let path = error.path().to_string();
-        let key = path.split(['.', '[']).next().unwrap_or_default();
-        match map.get(key) {
-            Some(value) => wrong_kind(key, keys, &shown(value)),
-            None => Fault::new(error.into_inner().to_string()),
-        }
+        let key = path.split(['.', '[']).next().unwrap_or_default().to_owned();
+        refused(
+            &key,
+            map.get(key.as_str()),
+            keys,
+            &error.into_inner().to_string(),
+        )
     })
+}
+
+/// The fault behind what the reading said of `key`.
+fn refused(key: &str, value: Option<&Dynamic>, keys: &[OptionKey], said: &str) -> Fault {
+    if let Some(missing) = said.strip_prefix("missing field `") {
+        let missing = missing.split('`').next().unwrap_or_default();
+        let wanted = wanted(missing, keys);
+        return Fault::new(format!("option `{missing}` is missing"))
+            .hint(format!("it takes {wanted}"));
+    }
+    let Some(value) = value else {
+        return Fault::new(said);
+    };
+    let about_the_kind = [
+        "invalid type",
+        "invalid value",
+        "invalid length",
+        "unknown variant",
+    ];
+    if !about_the_kind.iter().any(|start| said.starts_with(start))
+        && !said.contains("did not match")
+    {
+        return Fault::new(format!("option `{key}`: {said}")).at_key(key);
+    }
+    let fault = wrong_kind(key, keys, &shown(value));
+    let words = wanted(key, keys);
+    let words = words.split('"').skip(1).step_by(2);
+    match value
+        .as_immutable_string_ref()
+        .ok()
+        .and_then(|given| nearest(&given, words))
+    {
+        Some(word) => fault.hint(format!("did you mean \"{word}\"?")),
+        None => fault,
+    }
 }
 
 fn unknown(key: &str, keys: &[OptionKey]) -> Fault {
@@ -149,11 +213,14 @@ fn unknown(key: &str, keys: &[OptionKey]) -> Fault {
     }
 }
 
-fn wrong_kind(key: &str, keys: &[OptionKey], given: &str) -> Fault {
-    let wanted = keys
-        .iter()
+fn wanted(key: &str, keys: &[OptionKey]) -> String {
+    keys.iter()
         .find(|k| k.name == key)
-        .map_or_else(|| "something else".to_owned(), OptionKey::kind_text);
+        .map_or_else(|| "something else".to_owned(), OptionKey::kind_text)
+}
+
+fn wrong_kind(key: &str, keys: &[OptionKey], given: &str) -> Fault {
+    let wanted = wanted(key, keys);
     Fault::new(format!("option `{key}` takes {wanted}, not {given}")).at_key(key)
 }
 
@@ -213,9 +280,88 @@ fn plain(value: &Dynamic) -> Option<Value> {
     None
 }
 
+/// Compares what is documented with the struct: the same keys, and for each the default the
+/// struct takes. Gives what differs.
+#[cfg(test)]
+pub(super) fn differences<T: Options>() -> Vec<String> {
+    let mut wrong = Vec::new();
+    let mut fields = Vec::new();
+    let _ = T::deserialize(FieldNames(&mut fields));
+    let names: Vec<&str> = T::keys().iter().map(|k| k.name).collect();
+    let (mut sorted_fields, mut sorted_names) = (fields.clone(), names.clone());
+    sorted_fields.sort_unstable();
+    sorted_names.sort_unstable();
+    if sorted_fields != sorted_names {
+        wrong.push(format!("documented {names:?}, read {fields:?}"));
+    }
+    let mut engine = rhai::Engine::new();
+    engine.register_fn("/", |a: f64, b: f64| a / b);
+    let mut needed = Map::new();
+    for key in T::keys().iter().filter(|k| k.default == "needed") {
+        needed.insert(key.name.into(), Dynamic::from(1.5_f64));
+    }
+    let Ok(default) = read::<T>(&needed) else {
+        wrong.push(format!("{names:?}: the defaults are refused"));
+        return wrong;
+    };
+    let default = format!("{default:?}");
+    for key in T::keys() {
+        let text = key.default_text();
+        if text == "none" || text == "needed" {
+            continue;
+        }
+        let mut map = needed.clone();
+        match engine.eval::<Dynamic>(&text) {
+            Ok(value) => map.insert(key.name.into(), value),
+            Err(error) => {
+                wrong.push(format!("{}: default {text} is no value: {error}", key.name));
+                continue;
+            }
+        };
+        match read::<T>(&map) {
+            Ok(read) if format!("{read:?}") == default => {}
+            other => wrong.push(format!("{}: default {text} reads {other:?}", key.name)),
+        }
+    }
+    wrong
+}
+
+/// Asks a struct for the names of its fields.
+#[cfg(test)]
+struct FieldNames<'a>(&'a mut Vec<&'static str>);
+
+#[cfg(test)]
+impl<'de> serde::Deserializer<'de> for FieldNames<'_> {
+    type Error = serde::de::value::Error;
+
+    fn deserialize_struct<V: serde::de::Visitor<'de>>(
+        self,
+        _: &'static str,
+        fields: &'static [&'static str],
+        _: V,
+    ) -> Result<V::Value, Self::Error> {
+        self.0.extend(fields);
+        Err(serde::de::Error::custom("only the names"))
+    }
+
+    fn deserialize_any<V: serde::de::Visitor<'de>>(self, _: V) -> Result<V::Value, Self::Error> {
+        Err(serde::de::Error::custom("not a struct"))
+    }
+
+    serde::forward_to_deserialize_any! {
+        bool i8 i16 i32 i64 u8 u16 u32 u64 f32 f64 char str string bytes byte_buf option unit
+        unit_struct newtype_struct seq tuple tuple_struct map enum identifier ignored_any
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn what_is_documented_is_what_is_read() {
+        assert!(differences::<TestOptions>().is_empty());
+    }
 
     crate::options! {
         /// Options of the tests.

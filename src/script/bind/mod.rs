@@ -4,18 +4,30 @@
 //! together. Nothing is computed here: a closure calls a kernel and hands its answer on.
 
 mod core;
+mod field;
+mod field_arithmetic;
+mod frames;
+mod interrogate;
 mod lists;
 mod mathematics;
+mod place;
 mod quantity;
+mod synth;
+mod vortex;
 
 use super::draft::Room;
 
 type Write = fn(&mut Room);
 
 /// Every room with the function that writes its records, in the order help lists them.
-pub(super) const ROOMS: [(&str, Write); 4] = [
-    ("script", core::records),
+pub(super) const ROOMS: [(&str, Write); 9] = [
+    ("recordings", frames::records),
+    ("interrogation", interrogate::records),
+    ("fields", field::records),
+    ("eddies", vortex::records),
+    ("measured values", quantity::records),
+    ("known flows", synth::records),
     ("numbers", mathematics::records),
     ("lists and text", lists::records),
-    ("measured values", quantity::records),
+    ("script", core::records),
 ];

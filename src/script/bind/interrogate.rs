@@ -1,0 +1,211 @@
+//! Plans, and pairs to vector fields.
+
+use std::sync::Arc;
+
+use rhai::Dynamic;
+
+use super::super::call::Call;
+use super::super::draft::Room;
+use super::super::fault::Fault;
+use super::super::kind::Kind;
+use super::super::options::Optional;
+use super::vortex::FoundEddies;
+use crate::field::VectorField;
+use crate::frames::{Pair, Recording};
+use crate::interrogate::{Plan, PlanOptions, interrogate, interrogate_all};
+use crate::vortex::{EddyOptions, VortexError, find_eddies};
+
+crate::option_keys! {
+    PlanOptions {
+        windows_px: "list of whole numbers or [width, height]", "px", "[64, 32, 32, 32]",
+            "Interrogation window of each pass: one number for a square, even, 4 to 1024.";
+        overlap: "number", "fraction", "0.75",
+            "Share of a window that its neighbour also covers, 0 to 0.95.";
+        median_limit: "number", "plain number", "2.0",
+            "Normalized median residual above which a vector is replaced (Westerweel & Scarano 2005).";
+        median_floor_px: "number", "px", "0.1",
+            "Displacement noise the median test tolerates.";
+        least_lit: "number", "fraction", "0.5",
+            "Share of a window that must lie inside the image and outside masks.";
+    }
+}
+
+impl Kind for Plan {
+    const NAME: &'static str = "plan";
+    const ABOUT: &'static str = "How pairs are interrogated: the windows of each pass, in px, and the limits of validation.";
+
+    fn show(&self) -> String {
+        self.to_string()
+    }
+}
+
+/// The vector fields of a recording, one a pair.
+#[derive(Clone, Debug)]
+pub(super) struct Series(pub Vec<Arc<VectorField>>);
+
+impl Kind for Series {
+    const NAME: &'static str = "series of fields";
+    const ABOUT: &'static str = "Vector fields one after another, one a pair of a recording, all on \
+        one grid; `for` goes through them, [i] picks one.";
+
+    fn show(&self) -> String {
+        match self.0.first() {
+            None => "series of fields, empty".to_owned(),
+            Some(first) => format!(
+                "series of {} fields, the first: {}",
+                self.0.len(),
+                first.show()
+            ),
+        }
+    }
+
+    fn items(&self) -> Vec<Dynamic> {
+        self.0
+            .iter()
+            .map(|field| Dynamic::from(Arc::clone(field)))
+            .collect()
+    }
+
+    const HAS_ITEMS: bool = true;
+}
+
+macro_rules! with_a_recording {
+    ($code:literal) => {
+        concat!(
+            "let p = uniform(#{ u_px_per_frame: 2, v_px_per_frame: 0 }).pair(#{ width_px: 128, height_px: 128 });\n",
+            $code
+        )
+    };
+}
+
+/// Writes the records.
+pub(super) fn records(room: &mut Room) {
+    room.kind::<Plan>();
+    room.kind::<Series>();
+    room.function("plan")
+        .about(
+            "How pairs are to be interrogated: multi-pass cross-correlation with symmetric image \
+             deformation between the passes.",
+        )
+        .words("interrogation windows passes overlap settings correlation")
+        .errors("an option is out of its range")
+        .source("Scarano 2002 (deformation); Westerweel & Scarano 2005 (validation)")
+        .example(
+            "plan(#{ windows_px: [64, 32, 32], overlap: 0.75 })",
+            "plan: windows 64, 32, 32 px, overlap 0.75",
+        )
+        .does(|options: Optional<PlanOptions>| Plan::new(&options.0));
+    room.method::<Pair>("interrogate")
+        .about("The vector field of the pair: displacement of the particle pattern, window by window.")
+        .words("correlate displacement velocity vectors measure")
+        .input("plan", "", "how; the default plan when left out")
+        .unit("px/frame, or mm/s for a calibrated recording")
+        .errors("a frame cannot be read or is smaller than the window")
+        .source("Scarano 2002; Wereley & Meinhart 2001; Westerweel & Scarano 2005")
+        .example(
+            with_a_recording!(
+                "let flow = p.interrogate(plan(#{ windows_px: [32, 32], overlap: 0.5 }));\ndecimals(flow.u.mean().value, 1)"
+            ),
+            "\"2.0\"",
+        )
+        .does(|pair: &Pair, plan: Option<Arc<Plan>>, call: Call| {
+            interrogate(pair, &*given(plan)?, &call.task()).map_err(Fault::from)
+        });
+    room.method::<Recording>("interrogate")
+        .about("The vector fields of all pairs, over all cores, with progress; Ctrl-C stops it.")
+        .words("correlate displacement velocity vectors measure series all")
+        .input("plan", "", "how; the default plan when left out")
+        .unit("px/frame, or mm/s for a calibrated recording")
+        .errors("a frame cannot be read or is smaller than the window")
+        .source("Scarano 2002; Wereley & Meinhart 2001; Westerweel & Scarano 2005")
+        .example(
+            with_a_recording!(
+                "recording([p, p]).interrogate(plan(#{ windows_px: [32], overlap: 0 })).len()"
+            ),
+            "2",
+        )
+        .does(
+            |recording: &Recording, plan: Option<Arc<Plan>>, call: Call| {
+                let fields = interrogate_all(recording, &*given(plan)?, &call.task())?;
+                Ok::<_, Fault>(Series(fields.into_iter().map(Arc::new).collect()))
+            },
+        );
+    of_series(room);
+}
+
+fn given(plan: Option<Arc<Plan>>) -> Result<Arc<Plan>, Fault> {
+    match plan {
+        Some(plan) => Ok(plan),
+        None => Ok(Arc::new(Plan::new(&PlanOptions::default())?)),
+    }
+}
+
+fn of_series(room: &mut Room) {
+    room.method::<Series>("len")
+        .about("How many fields the series has.")
+        .words("count size number")
+        .unit("count")
+        .example(
+            with_a_recording!(
+                "recording([p, p, p]).interrogate(plan(#{ windows_px: [32], overlap: 0 })).len()"
+            ),
+            "3",
+        )
+        .does(|series: &Series| series.0.len());
+    room.index::<Series>()
+        .about("The field of this number.")
+        .words("pick choose one")
+        .input("index", "count", "which field, from 0; -1 is the last")
+        .unit("px/frame, or mm/s")
+        .errors("the series has no such field")
+        .example(
+            with_a_recording!("let all = recording([p, p]).interrogate(plan(#{ windows_px: [64], overlap: 0 }));\nall[-1].status_count(\"measured\")"),
+            "4",
+        )
+        .does(|series: &Series, index: i64| item(&series.0, index, "series", "fields"));
+    room.method::<Series>("eddies")
+        .about("The eddies of every field, as a list with one entry a field; over all cores.")
+        .words("vortex vortices find detect cores")
+        .errors("an option makes no sense or a field is smaller than 5 x 5 nodes")
+        .source("Zhou, Adrian, Balachandar & Kendall 1999 (swirling strength)")
+        .example(
+            with_a_recording!("let all = recording([p, p]).interrogate(plan(#{ windows_px: [32], overlap: 0.5 }));\nall.eddies().len()"),
+            "2",
+        )
+        .does(|series: &Series, options: Optional<EddyOptions>, call: Call| {
+            all_eddies(series, &options.0, &call)
+        });
+}
+
+fn all_eddies(
+    series: &Series,
+    options: &EddyOptions,
+    call: &Call,
+) -> Result<Vec<FoundEddies>, VortexError> {
+    use rayon::prelude::*;
+    let task = call.task();
+    series
+        .0
+        .par_iter()
+        .map(|field| find_eddies(field, options, &task))
+        .map(|found| found.map(|found| FoundEddies(Arc::new(found))))
+        .collect()
+}
+
+/// The item of this number, counted from the end below 0.
+pub(super) fn item<T: Clone>(items: &[T], index: i64, whole: &str, name: &str) -> Result<T, Fault> {
+    let count = i64::try_from(items.len()).unwrap_or(i64::MAX);
+    let counted = if index < 0 { index + count } else { index };
+    usize::try_from(counted)
+        .ok()
+        .and_then(|i| items.get(i))
+        .cloned()
+        .ok_or_else(|| {
+            let fault = Fault::new(format!("index {index} is past the end of the {whole}"));
+            match count {
+                0 => fault.hint("it is empty"),
+                1 => fault.hint(format!("it has 1 of the {name}, number 0")),
+                n => fault.hint(format!("it has {n} {name}, numbered 0 to {}", n - 1)),
+            }
+        })
+}
