@@ -109,7 +109,19 @@ impl Grid {
         Array2::from_shape_fn(self.shape(), |(j, i)| f(self.x(i), self.y(j)))
     }
 
-    /// One line for messages and summaries: `63 x 63 nodes, 0.4 mm apart`.
+    /// True when the nodes of both grids are the same to within a thousandth of a cell, so that
+    /// a field read back from a file meets the one that wrote it.
+    pub fn coincides_with(&self, other: &Grid) -> bool {
+        let near = |a: f64, b: f64, cell: f64| (a - b).abs() <= 1e-3 * cell;
+        self.shape() == other.shape()
+            && self.length == other.length
+            && near(self.x0, other.x0, self.dx)
+            && near(self.y0, other.y0, self.dy)
+            && near(self.x1(), other.x1(), self.dx)
+            && near(self.y1(), other.y1(), self.dy)
+    }
+
+    /// One line for messages and summaries: `63 x 63 nodes, 0.4 mm apart, from (0.8, 0.8) mm`.
     pub fn describe(&self) -> String {
         use crate::quantity::plain_number;
         let spacing = if self.dx == self.dy {
@@ -122,8 +134,12 @@ impl Grid {
             )
         };
         format!(
-            "{} x {} nodes, {spacing} {} apart",
-            self.nx, self.ny, self.length
+            "{} x {} nodes, {spacing} {length} apart, from ({}, {}) {length}",
+            self.nx,
+            self.ny,
+            plain_number(self.x0, 6),
+            plain_number(self.y0, 6),
+            length = self.length
         )
     }
 }

@@ -4,14 +4,23 @@
 //! x = x0 + i dx, y = y0 + j dy. A cell without a value holds NaN. Nothing here knows where a
 //! field came from, and nothing here finds eddies.
 
+mod arithmetic;
+mod derivative;
 mod gradient;
 mod grid;
 mod sample;
 mod scalar;
+mod scheme;
 mod vector;
 
-pub use gradient::{Gradient, Scheme};
+pub use arithmetic::Operand;
+pub use gradient::Gradient;
 pub use grid::{FieldError, Grid};
+pub(crate) use sample::Place;
 pub use sample::Trace;
 pub use scalar::ScalarField;
+pub use scheme::Scheme;
 pub use vector::{Status, VectorField};
+
+#[cfg(test)]
+mod gradient_tests;
