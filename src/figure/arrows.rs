@@ -63,7 +63,11 @@ impl Arrows {
         speeds.sort_by(f64::total_cmp);
         // The fastest hundredth may be outliers; they must not shrink all other arrows.
         let fast = speeds[(speeds.len() - 1) * 99 / 100];
-        let fast = if fast > 0.0 { fast } else { speeds[speeds.len() - 1] };
+        let fast = if fast > 0.0 {
+            fast
+        } else {
+            speeds[speeds.len() - 1]
+        };
         let round = if fast > 1e-150 {
             let (mantissa, power) = step_near(fast / 1.3);
             decimal(mantissa, power)
@@ -83,9 +87,12 @@ impl Arrows {
             .min(along(field.grid.dy, plot.y.hi - plot.y.lo, plot.rect.h))
             .max(1e-6);
         let spacing = self.options.spacing_mm.unwrap_or(SPACING_MM);
-        let every = self.options.every.unwrap_or((spacing / cell - 0.05).ceil().max(1.0) as usize);
-        // Reach of the fast ones: 1.6 spacings, but readable where vectors are few and far apart.
-        let reach = (1.6 * cell * every as f64).clamp(3.0, 9.0);
+        let every = self
+            .options
+            .every
+            .unwrap_or((spacing / cell - 0.05).ceil().max(1.0) as usize);
+        // Reach of the fast ones: 1.8 spacings, but readable where vectors are few and far apart.
+        let reach = (1.8 * cell * every as f64).clamp(3.0, 9.0);
         let mm_per_speed = match self.options.reference_mm {
             Some(mm) => mm / self.reference,
             None if self.fast > 1e-150 => reach / self.fast,
@@ -98,11 +105,7 @@ impl Arrows {
     }
 }
 
-fn check(
-    option: &'static str,
-    value: Option<f64>,
-    right: &'static str,
-) -> Result<(), FigureError> {
+fn check(option: &'static str, value: Option<f64>, right: &'static str) -> Result<(), FigureError> {
     match value {
         Some(v) if !(v.is_finite() && v > 0.0) => Err(FigureError::Option {
             option,
@@ -161,12 +164,12 @@ pub(crate) fn add_arrow(path: &mut Path, at: Point, vector: Point) {
         return;
     }
     if length < 0.35 {
-        path.add(&Path::circle(at, 0.14), |p| p);
+        path.add(&Path::circle(at, 0.17), |p| p);
         return;
     }
     let (along, across) = ([vector[0] / length, vector[1] / length], 0.5 * length);
     let head = (0.42 * length).clamp(0.3, 1.5);
-    let (barb, shaft) = (0.36 * head, (0.045 * length).clamp(0.07, 0.13));
+    let (barb, shaft) = (0.37 * head, (0.05 * length).clamp(0.08, 0.15));
     let notch = 0.72 * head;
     let place = |s: f64, n: f64| {
         [

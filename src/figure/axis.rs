@@ -58,7 +58,11 @@ impl Span {
             return self;
         }
         let middle = 0.5 * (self.lo + self.hi);
-        let half = if size > 1.0 / LARGEST { 0.1 * size } else { 1.0 };
+        let half = if size > 1.0 / LARGEST {
+            0.1 * size
+        } else {
+            1.0
+        };
         Self {
             lo: middle - half,
             hi: middle + half,
@@ -106,7 +110,11 @@ impl Axis {
                 return Err(FigureError::NothingAboveZero(name));
             }
             let decades = (span.hi / span.lo).log10();
-            let factor = if decades < 0.1 { 2.0 } else { 10f64.powf(room * decades) };
+            let factor = if decades < 0.1 {
+                2.0
+            } else {
+                10f64.powf(room * decades)
+            };
             let (lo, hi) = (span.lo / factor, span.hi * factor);
             return Ok(Self { lo, hi, log });
         }
@@ -141,11 +149,19 @@ impl Axis {
         (self.lo..=self.hi).contains(&value)
     }
 
+    /// About `about` marks, but never fewer than two: one number alone says no scale.
     pub fn ticks(&self, about: f64) -> Ticks {
-        if self.log {
-            ticks::logarithmic(self.lo, self.hi, about)
-        } else {
-            ticks::linear(self.lo, self.hi, about)
+        let mut about = about;
+        loop {
+            let ticks = if self.log {
+                ticks::logarithmic(self.lo, self.hi, about)
+            } else {
+                ticks::linear(self.lo, self.hi, about)
+            };
+            if ticks.major.len() > 1 || about > 20.0 {
+                return ticks;
+            }
+            about *= 1.5;
         }
     }
 }

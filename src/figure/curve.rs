@@ -94,7 +94,10 @@ impl Curve {
             x_span.take(x);
             y_span.take(y);
             let half = self.half_width(k);
-            for v in [y - half, y + half].into_iter().filter(|v| shown(*v, log.1)) {
+            for v in [y - half, y + half]
+                .into_iter()
+                .filter(|v| shown(*v, log.1))
+            {
                 y_span.take(v);
             }
         }
@@ -141,7 +144,10 @@ impl Curve {
                 // A single point between gaps would vanish as a line.
                 scene.fill(Path::circle(alone[0], stroke.width), colour);
             }
-            scene.stroke(Path::polyline(run.iter().map(|p| p[0]), false), stroke.clone());
+            scene.stroke(
+                Path::polyline(run.iter().map(|p| p[0]), false),
+                stroke.clone(),
+            );
         }
     }
 
@@ -202,8 +208,14 @@ fn draw_marks(scene: &mut Scene, marks: Path, colour: Colour) {
 fn add_mark(path: &mut Path, [x, y]: Point, index: usize) {
     match index % 3 {
         0 => path.add(&Path::circle([x, y], 0.75), |p| p),
-        1 => path.add_polyline([[x, y - 1.0], [x + 1.0, y], [x, y + 1.0], [x - 1.0, y]], true),
-        _ => path.add_polyline([[x - 0.9, y + 0.65], [x + 0.9, y + 0.65], [x, y - 1.0]], true),
+        1 => path.add_polyline(
+            [[x, y - 1.0], [x + 1.0, y], [x, y + 1.0], [x - 1.0, y]],
+            true,
+        ),
+        _ => path.add_polyline(
+            [[x - 0.9, y + 0.65], [x + 0.9, y + 0.65], [x, y - 1.0]],
+            true,
+        ),
     }
 }
 
@@ -218,7 +230,12 @@ pub(crate) fn draw_sample(scene: &mut Scene, [x, y]: Point, index: usize, look: 
             draw_marks(scene, mark, colour);
         }
         Look::Bars => {
-            let rect = Rect { x: x + 0.25 * SAMPLE_MM, y: y - 0.9, w: 0.5 * SAMPLE_MM, h: 1.8 };
+            let rect = Rect {
+                x: x + 0.25 * SAMPLE_MM,
+                y: y - 0.9,
+                w: 0.5 * SAMPLE_MM,
+                h: 1.8,
+            };
             scene.fill(Path::rect(rect), colour.faded(BAR_OPACITY));
         }
     }
@@ -267,7 +284,11 @@ impl Bars {
         let quarter = |q: usize| sorted.get(n * q / 4).copied().unwrap_or(0.0);
         let width = 2.0 * (quarter(3) - quarter(1)) / (n as f64).cbrt();
         let wanted = (span.width() / width).ceil();
-        let count = count.unwrap_or(if wanted.is_finite() { wanted.clamp(5.0, 60.0) as usize } else { 5 });
+        let count = count.unwrap_or(if wanted.is_finite() {
+            wanted.clamp(5.0, 60.0) as usize
+        } else {
+            5
+        });
         let count = count.max(1);
         let mut heights = vec![0.0; if n == 0 { 0 } else { count }];
         for v in &sorted {
@@ -277,7 +298,11 @@ impl Bars {
         let edge = |k: usize| span.lo + span.width() * k as f64 / count as f64;
         Self {
             name: "count".to_owned(),
-            edges: if n == 0 { Vec::new() } else { (0..=count).map(edge).collect() },
+            edges: if n == 0 {
+                Vec::new()
+            } else {
+                (0..=count).map(edge).collect()
+            },
             heights,
             x_name: name.to_owned(),
             x_unit: unit,
@@ -286,7 +311,8 @@ impl Bars {
     }
 
     pub(crate) fn check(&self) -> Result<(), FigureError> {
-        if self.edges.len() == self.heights.len() + 1 || self.edges.len() + self.heights.len() == 0 {
+        if self.edges.len() == self.heights.len() + 1 || self.edges.len() + self.heights.len() == 0
+        {
             return Ok(());
         }
         Err(FigureError::LengthsDiffer {
@@ -312,7 +338,11 @@ impl Bars {
         for (edges, height) in self.edges.windows(2).zip(&self.heights) {
             let ends = (plot.at(edges[0], *height), plot.at(edges[1], *height));
             if let (Some(a), Some(b)) = ends {
-                let foot = if plot.y.log { plot.rect.bottom() } else { plot.y_mm(0.0) };
+                let foot = if plot.y.log {
+                    plot.rect.bottom()
+                } else {
+                    plot.y_mm(0.0)
+                };
                 let gap = (0.12f64).min(0.1 * (b[0] - a[0]));
                 let (l, r) = (a[0] + gap, b[0] - gap);
                 path.add_polyline([[l, foot], [l, a[1]], [r, b[1]], [r, foot]], true);

@@ -25,7 +25,9 @@ pub enum FigureError {
         right: UnitName,
     },
     /// A second shaded field.
-    #[error("a figure shades one field, and {first:?} is already there; give {second:?} a panel of its own")]
+    #[error(
+        "a figure shades one field, and {first:?} is already there; give {second:?} a panel of its own"
+    )]
     #[allow(missing_docs)]
     TwoShades { first: String, second: String },
     /// Lists that should be equally long.

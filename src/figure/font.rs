@@ -23,9 +23,8 @@ pub(crate) const CAPITAL: f64 = 0.689;
 static REGULAR: LazyLock<Option<Face<'static>>> = LazyLock::new(|| {
     Face::parse(include_bytes!("../../assets/fonts/FiraSans-Regular.ttf"), 0).ok()
 });
-static MEDIUM: LazyLock<Option<Face<'static>>> = LazyLock::new(|| {
-    Face::parse(include_bytes!("../../assets/fonts/FiraSans-Medium.ttf"), 0).ok()
-});
+static MEDIUM: LazyLock<Option<Face<'static>>> =
+    LazyLock::new(|| Face::parse(include_bytes!("../../assets/fonts/FiraSans-Medium.ttf"), 0).ok());
 
 /// `None` only if the embedded bytes were damaged, which a test rules out.
 fn face(weight: Weight) -> Option<&'static Face<'static>> {
@@ -185,6 +184,9 @@ mod tests {
                 high = high.max(p[1]);
             }
         }
-        assert!(low.abs() < 0.01 && (high - CAPITAL).abs() < 0.01, "{low} {high}");
+        assert!(
+            low.abs() < 0.01 && (high - CAPITAL).abs() < 0.01,
+            "{low} {high}"
+        );
     }
 }

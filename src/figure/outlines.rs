@@ -53,7 +53,15 @@ pub(crate) fn draw(scene: &mut Scene, set: &OutlineSet, plot: &Plot) {
         for outline in set.list.iter().filter(visible) {
             if let Some(centre) = plot.at(outline.centre[0], outline.centre[1]) {
                 draw_mark(scene, centre, outline.clockwise);
-                placement.take(Rect { x: centre[0], y: centre[1], w: 0.0, h: 0.0 }.grown(MARK_MM));
+                placement.take(
+                    Rect {
+                        x: centre[0],
+                        y: centre[1],
+                        w: 0.0,
+                        h: 0.0,
+                    }
+                    .grown(MARK_MM),
+                );
             }
         }
     });
@@ -86,7 +94,11 @@ fn draw_mark(scene: &mut Scene, centre: Point, clockwise: bool) {
         ]
     };
     let mut solid = Path::circle(centre, 0.3);
-    let head = [at(MARK_MM, 0.75), at(MARK_MM + 0.5, -0.15), at(MARK_MM - 0.5, -0.15)];
+    let head = [
+        at(MARK_MM, 0.75),
+        at(MARK_MM + 0.5, -0.15),
+        at(MARK_MM - 0.5, -0.15),
+    ];
     solid.add_polyline(head, true);
     let halo = PAPER.faded(225);
     scene.stroke(arc.clone(), Stroke::new(halo, 0.85).rounded());
@@ -99,16 +111,23 @@ fn draw_label(scene: &mut Scene, placement: &mut Placement, centre: Point, label
     let style = Style::plain(LABEL_MM).medium().haloed();
     let size = text_box(label, &style);
     let candidates = [1.0, 1.8, 2.8].into_iter().flat_map(|far| {
-        [(1.0, -1.0), (-1.0, -1.0), (1.0, 1.0), (-1.0, 1.0), (0.0, -1.2), (0.0, 1.2)]
-            .into_iter()
-            .map(move |(sx, sy)| {
-                let reach = far * (MARK_MM + 0.25);
-                Rect {
-                    x: centre[0] + sx * (reach + 0.5 * size.w) - 0.5 * size.w,
-                    y: centre[1] + sy * (reach + 0.3 * size.h) - 0.5 * size.h,
-                    ..size
-                }
-            })
+        [
+            (1.0, -1.0),
+            (-1.0, -1.0),
+            (1.0, 1.0),
+            (-1.0, 1.0),
+            (0.0, -1.2),
+            (0.0, 1.2),
+        ]
+        .into_iter()
+        .map(move |(sx, sy)| {
+            let reach = far * (MARK_MM + 0.25);
+            Rect {
+                x: centre[0] + sx * (reach + 0.5 * size.w) - 0.5 * size.w,
+                y: centre[1] + sy * (reach + 0.3 * size.h) - 0.5 * size.h,
+                ..size
+            }
+        })
     });
     if let Some(rect) = placement.choose(candidates) {
         scene.text(base_line(&rect), label, style);

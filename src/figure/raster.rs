@@ -130,8 +130,16 @@ fn line(stroke: &Stroke) -> tiny_skia::Stroke {
     let dash: Vec<f32> = stroke.dash.iter().map(|d| *d as f32).collect();
     tiny_skia::Stroke {
         width: stroke.width as f32,
-        line_cap: if stroke.round { LineCap::Round } else { LineCap::Butt },
-        line_join: if stroke.round { LineJoin::Round } else { LineJoin::Miter },
+        line_cap: if stroke.round {
+            LineCap::Round
+        } else {
+            LineCap::Butt
+        },
+        line_join: if stroke.round {
+            LineJoin::Round
+        } else {
+            LineJoin::Miter
+        },
         dash: StrokeDash::new(dash, 0.0),
         ..tiny_skia::Stroke::default()
     }

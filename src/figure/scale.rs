@@ -57,8 +57,16 @@ fn along(knots: &Knots, t: f64) -> [f64; 2] {
     let f = s - i as f64;
     std::array::from_fn(|k| {
         let (p1, p2) = (knots[i][k], knots[i + 1][k]);
-        let p0 = if i == 0 { 2.0 * p1 - p2 } else { knots[i - 1][k] };
-        let p3 = if i + 2 > last { 2.0 * p2 - p1 } else { knots[i + 2][k] };
+        let p0 = if i == 0 {
+            2.0 * p1 - p2
+        } else {
+            knots[i - 1][k]
+        };
+        let p3 = if i + 2 > last {
+            2.0 * p2 - p1
+        } else {
+            knots[i + 2][k]
+        };
         0.5 * (2.0 * p1
             + (p2 - p0) * f
             + (2.0 * p0 - 5.0 * p1 + 4.0 * p2 - p3) * f * f
@@ -89,7 +97,11 @@ impl ColourScale {
 
     /// CIELAB (L*, a*, b*) at `fraction`, which is clamped to 0 to 1; NaN counts as 0.
     pub fn lab(self, fraction: f64) -> [f64; 3] {
-        let t = if fraction > 0.0 { fraction.min(1.0) } else { 0.0 };
+        let t = if fraction > 0.0 {
+            fraction.min(1.0)
+        } else {
+            0.0
+        };
         let (lightness, [a, b]) = match self {
             ColourScale::Silt => (96.0 - 82.0 * t, along(&SILT, t)),
             ColourScale::EbbFlood => {

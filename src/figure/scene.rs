@@ -30,7 +30,13 @@ pub(crate) struct Path {
 }
 
 fn tame(p: Point) -> Point {
-    p.map(|c| if c.is_nan() { 0.0 } else { c.clamp(-FARTHEST, FARTHEST) })
+    p.map(|c| {
+        if c.is_nan() {
+            0.0
+        } else {
+            c.clamp(-FARTHEST, FARTHEST)
+        }
+    })
 }
 
 impl Path {
@@ -343,9 +349,7 @@ impl Scene {
         };
         let mut path = Path::new();
         let s = style.size;
-        path.add(&outline, |[x, y]| {
-            [at[0] + (x - shift) * s, at[1] - y * s]
-        });
+        path.add(&outline, |[x, y]| [at[0] + (x - shift) * s, at[1] - y * s]);
         if path.is_empty() {
             return;
         }

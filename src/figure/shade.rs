@@ -44,8 +44,8 @@ impl Shading {
             return Err(FigureError::NothingFinite(field.name.clone()));
         }
         let size = span.lo.abs().max(span.hi.abs());
-        let signed = span.lo < 0.0 && span.hi > 0.0
-            && span.lo.abs().min(span.hi.abs()) > ONE_SIDED * size;
+        let signed =
+            span.lo < 0.0 && span.hi > 0.0 && span.lo.abs().min(span.hi.abs()) > ONE_SIDED * size;
         let scale = options.scale.unwrap_or(if signed {
             ColourScale::EbbFlood
         } else {
@@ -53,7 +53,10 @@ impl Shading {
         });
         let shown = if scale.is_diverging() {
             let half = if size > 0.0 { size } else { 1.0 };
-            Span { lo: -half, hi: half }
+            Span {
+                lo: -half,
+                hi: half,
+            }
         } else {
             span
         };

@@ -70,7 +70,9 @@ pub(crate) fn logarithmic(lo: f64, hi: f64, about: f64) -> Ticks {
                 continue;
             }
             if folds.contains(&fold) && power.rem_euclid(every) == 0 {
-                ticks.major.push((value.clamp(lo, hi), power_text(fold, power, plain)));
+                ticks
+                    .major
+                    .push((value.clamp(lo, hi), power_text(fold, power, plain)));
             } else if every == 1 || fold == 1 {
                 ticks.minor.push(value);
             }
@@ -82,6 +84,7 @@ pub(crate) fn logarithmic(lo: f64, hi: f64, about: f64) -> Ticks {
 fn power_text(fold: i64, power: i32, plain: bool) -> String {
     match (plain, fold) {
         (true, _) => format!("{:.*}", (-power).max(0) as usize, decimal(fold, power)),
+        (false, 1) if power == 0 => "1".to_owned(),
         (false, 1) => ten_to(power),
         (false, fold) => format!("{fold}·{}", ten_to(power)),
     }
@@ -181,14 +184,26 @@ mod tests {
     #[test]
     fn numbers_are_written_as_a_person_would() {
         let texts = |t: Ticks| t.major.into_iter().map(|m| m.1).collect::<Vec<_>>();
-        assert_eq!(texts(linear(-1.0, 1.0, 4.0)), ["−1.0", "−0.5", "0.0", "0.5", "1.0"]);
-        assert_eq!(texts(linear(0.0, 100.0, 5.0)), ["0", "20", "40", "60", "80", "100"]);
+        assert_eq!(
+            texts(linear(-1.0, 1.0, 4.0)),
+            ["−1.0", "−0.5", "0.0", "0.5", "1.0"]
+        );
+        assert_eq!(
+            texts(linear(0.0, 100.0, 5.0)),
+            ["0", "20", "40", "60", "80", "100"]
+        );
         let large = linear(0.0, 4e6, 4.0);
         assert_eq!(large.exponent, 6);
         assert_eq!(texts(large), ["0", "1", "2", "3", "4"]);
         assert_eq!(linear(0.0, 2e-7, 4.0).exponent, -9);
-        assert_eq!(texts(logarithmic(0.01, 100.0, 5.0)), ["0.01", "0.1", "1", "10", "100"]);
-        assert_eq!(texts(logarithmic(1e-6, 1e-4, 5.0)), ["10⁻⁶", "10⁻⁵", "10⁻⁴"]);
+        assert_eq!(
+            texts(logarithmic(0.01, 100.0, 5.0)),
+            ["0.01", "0.1", "1", "10", "100"]
+        );
+        assert_eq!(
+            texts(logarithmic(1e-6, 1e-4, 5.0)),
+            ["10⁻⁶", "10⁻⁵", "10⁻⁴"]
+        );
         assert_eq!(linear(0.0, 0.4, 4.0).major[3].0, 0.3);
     }
 }
