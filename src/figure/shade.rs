@@ -87,8 +87,9 @@ impl Shading {
     }
 }
 
-/// Colours of the palette that are shades of the scale; the rest are hatching and paper.
-const SHADES: usize = 240;
+/// Colours of the palette that are shades of the scale, an odd number so that the middle has one;
+/// the rest are hatching and paper.
+const SHADES: usize = 241;
 /// Colours from the ground of the hatching to its lines.
 const HATCH: usize = 8;
 const BLANK: u8 = (SHADES + HATCH) as u8;
