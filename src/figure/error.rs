@@ -3,6 +3,7 @@
 use std::path::PathBuf;
 
 use crate::quantity::Unit;
+use crate::store::StoreError;
 
 /// Why a figure could not be drawn or saved.
 #[derive(Debug, thiserror::Error)]
@@ -65,12 +66,8 @@ pub enum FigureError {
     #[error("cannot tell the format of {}: end the name in .svg or .png", .0.display())]
     Extension(PathBuf),
     /// The file could not be written.
-    #[error("cannot write {}: {source}", path.display())]
-    #[allow(missing_docs)]
-    Write {
-        path: PathBuf,
-        source: std::io::Error,
-    },
+    #[error(transparent)]
+    Store(#[from] StoreError),
     /// The dots could not be packed into a PNG.
     #[error("cannot make the PNG: {0}")]
     Encode(String),

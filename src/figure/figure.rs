@@ -10,8 +10,9 @@ use super::layer::Layer;
 use super::outlines::OutlineSet;
 use super::scene::Scene;
 use super::shade::ShadeOptions;
-use super::{layout, panels, raster, save, svg};
+use super::{layout, panels, raster, svg};
 use crate::field::{ScalarField, Trace, VectorField};
+use crate::store::write_atomically;
 
 /// Dots per inch of a PNG that is saved by name alone, and of shading inside an SVG.
 pub const DOTS_PER_INCH: f64 = 300.0;
@@ -218,9 +219,7 @@ impl Figure {
             "png" => self.png(DOTS_PER_INCH)?,
             _ => return Err(FigureError::Extension(path.to_owned())),
         };
-        save::whole(path, &bytes).map_err(|source| FigureError::Write {
-            path: path.to_owned(),
-            source,
-        })
+        write_atomically(path, |file| file.write_all(&bytes))?;
+        Ok(())
     }
 }

@@ -25,7 +25,6 @@ mod outlines;
 mod panels;
 mod placement;
 mod raster;
-mod save;
 mod scale;
 mod scene;
 mod shade;
