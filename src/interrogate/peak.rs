@@ -26,23 +26,43 @@ pub(crate) fn three_point([before, middle, after]: [f32; 3]) -> f64 {
 /// The 5 x 5 samples of a correlation plane round its highest one, row after row.
 pub(crate) type Patch = [[f32; 5]; 5];
 
-/// Offset (along the rows of the patch, across them) of the true maximum from the middle sample.
-///
-/// The plane is first smoothed by a kernel of variance 1/4 px² on each axis. What images of
-/// particles hold close to half a cycle a px is folded there by the pixels themselves and pulls
-/// every peak towards whole px; smoothing takes a third off that pull, and nearly a half where
-/// particle images are small, for 8 % more noise.
-pub(crate) fn peak_offset(patch: &Patch) -> (f64, f64) {
-    const NEAR: f32 = 0.125;
-    let soft = |a: f32, b: f32, c: f32| b + NEAR * (a - 2.0 * b + c);
-    let smooth = |r: usize, c: usize| {
-        let along = |r: usize| soft(patch[r][c - 1], patch[r][c], patch[r][c + 1]);
-        soft(along(r - 1), along(r), along(r + 1))
-    };
-    (
-        three_point([smooth(2, 1), smooth(2, 2), smooth(2, 3)]),
-        three_point([smooth(1, 2), smooth(2, 2), smooth(3, 2)]),
-    )
+/// A peak read from its patch.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Peak {
+    /// Offset (along the rows of the patch, across them) of the true maximum from its middle.
+    pub offset: (f64, f64),
+    /// The middle sample of the smoothed plane.
+    pub top: f32,
+    /// Mean of the smoothed samples on either side, along the rows and across them.
+    pub sides: (f32, f32),
+}
+
+impl Peak {
+    /// Reads a peak.
+    ///
+    /// The plane is first smoothed by a kernel of variance 1/4 px² on each axis. What images of
+    /// particles hold close to half a cycle a px is folded there by the pixels themselves and
+    /// pulls every peak towards whole px; smoothing takes a third off that pull, and nearly a
+    /// half where particle images are small, for 8 % more noise.
+    pub fn of(patch: &Patch) -> Peak {
+        const NEAR: f32 = 0.125;
+        let soft = |a: f32, b: f32, c: f32| b + NEAR * (a - 2.0 * b + c);
+        let smooth = |r: usize, c: usize| {
+            let along = |r: usize| soft(patch[r][c - 1], patch[r][c], patch[r][c + 1]);
+            soft(along(r - 1), along(r), along(r + 1))
+        };
+        let top = smooth(2, 2);
+        let (left, right) = (smooth(2, 1), smooth(2, 3));
+        let (above, below) = (smooth(1, 2), smooth(3, 2));
+        Peak {
+            offset: (
+                three_point([left, top, right]),
+                three_point([above, top, below]),
+            ),
+            top,
+            sides: ((left + right) / 2.0, (above + below) / 2.0),
+        }
+    }
 }
 
 #[cfg(test)]

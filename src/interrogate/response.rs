@@ -22,6 +22,8 @@ pub(crate) struct Response {
     transfer: Vec<f64>,
     /// Transfer of the last window alone.
     single: Vec<f64>,
+    /// Transfer of the last pass's predictor; zero when it had none.
+    predicted: Vec<f64>,
 }
 
 impl Response {
@@ -33,6 +35,7 @@ impl Response {
         let limit = (limit(last.window.width), limit(last.window.height));
         let mut transfer: Option<Vec<f64>> = None;
         let mut single = Vec::new();
+        let mut predicted = Vec::new();
         let mut before: Option<&Layout> = None;
         for layout in layouts {
             let [x, y] = [
@@ -46,23 +49,23 @@ impl Response {
                     .collect::<Vec<_>>()
             });
             single = outer(&y, &x);
-            transfer = Some(match (&transfer, before) {
-                (Some(old), Some(before)) => {
-                    let f = smoothing(before, limit);
-                    old.iter()
-                        .zip(&single)
-                        .zip(&f)
-                        .map(|((t, s), f)| s + (1.0 - s) * f * t)
-                        .collect()
-                }
-                _ => single.clone(),
-            });
+            predicted = match (&transfer, before) {
+                (Some(old), Some(before)) => smoothing(before, limit)
+                    .iter()
+                    .zip(old)
+                    .map(|(f, t)| f * t)
+                    .collect(),
+                _ => vec![0.0; single.len()],
+            };
+            let pass = |(s, p): (&f64, &f64)| s + (1.0 - s) * p;
+            transfer = Some(single.iter().zip(&predicted).map(pass).collect());
             before = Some(layout);
         }
         Some(Self {
             limit,
             transfer: transfer?,
             single,
+            predicted,
         })
     }
 
@@ -70,6 +73,32 @@ impl Response {
     pub fn gain(&self) -> f64 {
         let power = |t: &[f64]| self.sum(t, |_, _| 1.0);
         (power(&self.transfer) / power(&self.single)).sqrt()
+    }
+
+    /// Share of the noise that is left to see in the deformed images of the last pass, to sums
+    /// that join pixels up to `reach` apart on each axis: the predictor has already followed,
+    /// and so taken out, its longest waves.
+    pub fn left_to_see(&self, reach: usize) -> f64 {
+        // The spectrum of such sums: a box of 2 reach + 1 px on each axis.
+        let along = |k: f64| -> f64 {
+            let turn = std::f64::consts::TAU * k;
+            1.0 + 2.0 * (1..=reach).map(|m| (turn * m as f64).cos()).sum::<f64>()
+        };
+        let cell = 4.0 * self.limit.0 * self.limit.1 / ((STEPS - 1) * (STEPS - 1)) as f64;
+        let axis = |limit: f64| -> Vec<f64> {
+            let at = |k: usize| along(limit * k as f64 / (STEPS - 1) as f64);
+            (0..STEPS).map(at).collect()
+        };
+        let (x, y) = (axis(self.limit.0), axis(self.limit.1));
+        let end = |k: usize| if k == 0 || k == STEPS - 1 { 0.5 } else { 1.0 };
+        let mut gone = 0.0;
+        for j in 0..STEPS {
+            for i in 0..STEPS {
+                let p = self.predicted[j * STEPS + i];
+                gone += end(i) * end(j) * x[i] * y[j] * (1.0 - (1.0 - p).powi(2));
+            }
+        }
+        (1.0 - gone * cell).max(0.1)
     }
 
     /// Correlation of the errors of two vectors (dx, dy) px apart.

@@ -7,10 +7,12 @@ use rayon::prelude::*;
 
 use super::deform::Deformed;
 use super::layout::Layout;
-use super::pass::{Finding, correlate};
+use super::pass::{Finding, Pass};
 use super::plan::{Plan, WindowSize};
 use super::predictor::{Predictor, Shifts};
+use super::response::Response;
 use super::spline::SplineImage;
+use super::statistics::{REACH, pooled};
 use super::validate::{MedianTest, fill};
 use crate::field::{Grid, Status, VectorField};
 use crate::frames::{FrameError, Pair, Recording, Scale};
@@ -151,13 +153,21 @@ pub fn interrogate_images(
             }
         };
         let reach = reach(layout.window, pass == 0);
-        let findings = correlate(&images, layout, reach, task)?;
+        let is_last = pass + 1 == layouts.len();
+        let findings = Pass::new(&images, layout, reach, is_last).run(task)?;
         let judged = judge(&findings, layout, predictor.as_ref(), plan);
         known = Some((judged.shifts.clone(), *layout));
-        last = Some((judged, *layout));
+        last = Some((judged, *layout, findings));
     }
     match last {
-        Some((judged, layout)) => Ok(finish(judged, &layout, height, scale, label)),
+        Some((judged, layout, findings)) => {
+            // A single window's doubt, corrected for what the passes before hid and added.
+            let gain =
+                Response::new(&layouts).map_or(1.0, |r| r.gain() / r.left_to_see(REACH).sqrt());
+            Ok(finish(
+                judged, &findings, gain, &layout, height, scale, label,
+            ))
+        }
         None => unreachable!("a plan has at least one pass"),
     }
 }
@@ -277,6 +287,8 @@ fn judge(
 /// Turns the last pass into a field with y up and the units of the calibration.
 fn finish(
     judged: Judged,
+    findings: &Array2<Finding>,
+    gain: f64,
     layout: &Layout,
     height: usize,
     scale: &Scale,
@@ -305,6 +317,22 @@ fn finish(
             }
         })
     };
+    let around = (
+        layout.window.height / 2 / layout.step_y,
+        layout.window.width / 2 / layout.step_x,
+    );
+    let doubt = |axis: fn(&Finding) -> Option<f64>| {
+        let variances = Array2::from_shape_fn(findings.dim(), |at| {
+            let measured = judged.status[at] == Status::Measured;
+            measured.then(|| axis(&findings[at])).flatten()
+        });
+        Array2::from_shape_fn(grid.shape(), |at| {
+            pooled(&variances, flip(at), around)
+                .filter(|_| status[at] == Status::Measured)
+                .map_or(f64::NAN, |u| u * gain * mm / dt)
+        })
+    };
+    let unc = Some((doubt(|f| f.variance.0), doubt(|f| f.variance.1)));
     let u = take(&judged.shifts.x, mm / dt);
     let v = take(&judged.shifts.y, -mm / dt);
     VectorField {
@@ -313,7 +341,7 @@ fn finish(
         u,
         v,
         status,
-        unc: None,
+        unc,
         window: Some((
             layout.window.width as f64 * mm,
             layout.window.height as f64 * mm,

@@ -7,6 +7,8 @@
 //! of neighbouring pixels, is the variance of that difference, and the three-point fit turns it
 //! into px (Wieneke 2015, Meas. Sci. Technol. 26, 074002).
 
+use ndarray::Array2;
+
 use super::transform::BATCH;
 
 /// One value a lane.
@@ -14,14 +16,7 @@ pub(crate) type Lanes = [f32; BATCH];
 
 /// Pixels on either side over which the contributions of neighbours are taken to be correlated:
 /// a little more than the width of a usual particle image.
-const REACH: usize = 3;
-
-/// The part of [`Lean`] that belongs to one axis.
-#[derive(Clone, Copy, Debug)]
-pub(crate) struct Lean {
-    /// Variance of the difference between the samples on either side of the peak.
-    pub variance: Lanes,
-}
+pub(crate) const REACH: usize = 3;
 
 /// Room for the sums of one window batch.
 pub(crate) struct StatisticsScratch {
@@ -49,7 +44,7 @@ pub(crate) fn lean_variance(
     b: &[Lanes],
     width: usize,
     scratch: &mut StatisticsScratch,
-) -> [Lean; 2] {
+) -> [Lanes; 2] {
     let height = a.len() / width;
     soften(b, width, &mut scratch.soft);
     [(0, 1), (1, 0)].map(|(down, right)| {
@@ -75,9 +70,7 @@ pub(crate) fn lean_variance(
                 cell[l] -= mean[l] / n;
             }
         }
-        Lean {
-            variance: spread(lean, columns, &mut scratch.sums),
-        }
+        spread(lean, columns, &mut scratch.sums)
     })
 }
 
@@ -159,15 +152,43 @@ fn spread(values: &[Lanes], width: usize, sums: &mut [Lanes]) -> Lanes {
     total
 }
 
-/// Standard uncertainty, px, of the three-point fit whose middle sample is `top` and whose side
-/// samples average `side`, when their difference has this variance; `None` where there is no
-/// peak to speak of.
-pub(crate) fn uncertainty(variance: f32, top: f32, side: f32) -> Option<f64> {
-    if !(variance >= 0.0 && side > 0.0 && top > side) {
+/// Variance, px², of the three-point fit whose middle sample is `top` and whose side samples
+/// average `side`, when their difference has the variance `lean`; `None` where there is no peak
+/// to speak of.
+///
+/// `pixels` is how many contributions were summed: taking their mean out took the share
+/// (2 [`REACH`] + 1)² / `pixels` of the variance with it, which is given back. An estimate can
+/// come out below zero by chance; only a mean of several is an uncertainty ([`pooled`]).
+pub(crate) fn variance(lean: f32, top: f32, side: f32, pixels: usize) -> Option<f64> {
+    if !(lean.is_finite() && side > 0.0 && top > side) {
         return None;
     }
-    let (variance, top, side) = (f64::from(variance), f64::from(top), f64::from(side));
-    Some(variance.sqrt() / (4.0 * side * (top / side).ln()))
+    let (lean, top, side) = (f64::from(lean), f64::from(top), f64::from(side));
+    let box_area = ((2 * REACH + 1) * (2 * REACH + 1)) as f64;
+    let kept = (1.0 - box_area / pixels as f64).max(0.25);
+    Some(lean / kept / (4.0 * side * (top / side).ln()).powi(2))
+}
+
+/// Root of the mean variance over the cells up to `reach` (rows, columns) away that have one.
+///
+/// One window holds too few particles to say its own variance well; half a window further on
+/// every side it is hardly another flow.
+pub(crate) fn pooled(
+    variances: &Array2<Option<f64>>,
+    (j, i): (usize, usize),
+    reach: (usize, usize),
+) -> Option<f64> {
+    let (rows, columns) = variances.dim();
+    let (mut sum, mut n) = (0.0, 0.0);
+    for jj in j.saturating_sub(reach.0)..=(j + reach.0).min(rows - 1) {
+        for ii in i.saturating_sub(reach.1)..=(i + reach.1).min(columns - 1) {
+            if let Some(variance) = variances[(jj, ii)] {
+                sum += variance;
+                n += 1.0;
+            }
+        }
+    }
+    (sum > 0.0).then(|| (sum / n).sqrt())
 }
 
 #[cfg(test)]
@@ -202,8 +223,9 @@ mod tests {
         use crate::interrogate::peak::three_point;
         let (top, side, small) = (1.0f32, 0.6f32, 1e-3f32);
         let d = three_point([side - small / 2.0, top, side + small / 2.0]);
-        let u = uncertainty(small * small, top, side).unwrap();
+        let many = 1_000_000;
+        let u = variance(small * small, top, side, many).unwrap().sqrt();
         assert!((d - u).abs() < 1e-6);
-        assert_eq!(uncertainty(1.0, 0.5, 0.6), None);
+        assert_eq!(variance(1.0, 0.5, 0.6, many), None);
     }
 }
