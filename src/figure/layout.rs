@@ -101,6 +101,13 @@ fn x_ticks(axis: &Axis, width: f64) -> Ticks {
     }
 }
 
+/// Leaves out short marks that would stand closer than a millimetre.
+fn thin(ticks: &mut Ticks, side: f64) {
+    if ticks.minor.len() as f64 > side {
+        ticks.minor.clear();
+    }
+}
+
 /// How far the last number along x reaches beyond the plot.
 fn overhang(axis: &Axis, ticks: &Ticks, width: f64) -> f64 {
     ticks.major.last().map_or(0.0, |(value, text)| {
@@ -160,14 +167,19 @@ fn place(settled: &Settled, width: f64, left: f64, over: f64) -> Result<Layout, 
         w,
         h,
     };
+    let mut x_ticks = x_ticks(&settled.x, w);
+    let apart = if settled.is_map { 13.0 } else { 10.0 };
+    let mut y_ticks = settled.y.ticks(h / apart);
+    thin(&mut x_ticks, w);
+    thin(&mut y_ticks, h);
     Ok(Layout {
         plot: Plot {
             rect,
             x: settled.x,
             y: settled.y,
         },
-        x_ticks: x_ticks(&settled.x, w),
-        y_ticks: settled
+        x_ticks,
+        y_ticks,
             .y
             .ticks(h / if settled.is_map { 13.0 } else { 10.0 }),
         size: (width, height),
