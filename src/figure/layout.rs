@@ -180,8 +180,6 @@ fn place(settled: &Settled, width: f64, left: f64, over: f64) -> Result<Layout, 
         },
         x_ticks,
         y_ticks,
-            .y
-            .ticks(h / if settled.is_map { 13.0 } else { 10.0 }),
         size: (width, height),
     })
 }
