@@ -8,19 +8,29 @@
 use std::time::Instant;
 
 use kolk::interrogate::transform::{
-    Correlator, LANES, Layout, Polyphase, Scratch, Search, Windows,
+    Correlator, LANES, Layout, Polyphase, Scratch, Search, WindowColumns, Windows,
 };
 
 const SIZE: usize = 1024;
 
-/// An image of uniform noise.
-fn image(mut seed: u32) -> Vec<f32> {
-    (0..SIZE * SIZE)
-        .map(|_| {
-            seed = seed.wrapping_mul(1_664_525).wrapping_add(1_013_904_223);
-            (seed >> 16) as f32
-        })
-        .collect()
+/// Two exposures of one pattern, the second moved by (3, 2) px, each with noise of its own.
+fn exposures() -> [Vec<f32>; 2] {
+    let mut seed = 1_u32;
+    let mut noise = || {
+        seed = seed.wrapping_mul(1_664_525).wrapping_add(1_013_904_223);
+        (seed >> 16) as f32 / 65536.0
+    };
+    let specks: Vec<f32> = (0..SIZE * SIZE).map(|_| (noise() - 0.9).max(0.0)).collect();
+    let speck = |r: usize, c: usize| specks[(r % SIZE) * SIZE + c % SIZE];
+    [(0, 0), (SIZE - 2, SIZE - 3)].map(|(down, right)| {
+        let mut image = vec![0.0; SIZE * SIZE];
+        for (place, value) in image.iter_mut().enumerate() {
+            let (r, c) = (place / SIZE + down, place % SIZE + right);
+            let near = speck(r, c + 1) + speck(r + 1, c) + speck(r, c) + speck(r + 1, c + 1);
+            *value = 200.0 + 20000.0 * near + 100.0 * noise();
+        }
+        image
+    })
 }
 
 /// What one pass over the pair needs, made once.
@@ -63,7 +73,13 @@ impl Pass {
         let count = (SIZE - side) / spacing + 1;
         let batches = count * count.div_ceil(LANES);
         let correlator = Correlator::new(side, side).expect("a usual size");
-        let images = [(); 2].map(|()| Polyphase::new(SIZE, SIZE, spacing));
+        let columns = WindowColumns {
+            left: 0,
+            spacing,
+            count,
+            width: side,
+        };
+        let images = [(); 2].map(|()| Polyphase::new(side, columns));
         Pass {
             side,
             reach,
@@ -71,9 +87,9 @@ impl Pass {
             scratch: correlator.scratch(),
             planes: vec![0.0; correlator.planes_length()],
             correlator,
-            layout: images[0].layout(0, side),
+            layout: images[0].layout(),
             images,
-            regroup: Least::new(2),
+            regroup: Least::new(count),
             correlate: Least::new(batches),
             peaks: Least::new(batches),
         }
@@ -81,11 +97,6 @@ impl Pass {
 
     /// Goes over the pair once and returns a number that depends on all results.
     fn run(&mut self, exposures: &[Vec<f32>; 2]) -> f64 {
-        for (i, (image, exposure)) in self.images.iter_mut().zip(exposures).enumerate() {
-            let start = Instant::now();
-            image.fill(exposure, SIZE);
-            self.regroup.note(i, start);
-        }
         let search = Search {
             reach_x: self.reach,
             reach_y: self.reach,
@@ -93,12 +104,15 @@ impl Pass {
         };
         let (mut batch, mut sum) = (0, 0.0);
         for row in 0..self.count {
-            for index in (0..self.count).step_by(LANES) {
+            let start = Instant::now();
+            self.advance(row, exposures);
+            self.regroup.note(row, start);
+            for batch_in_row in 0..self.count.div_ceil(LANES) {
                 let windows = Windows {
                     first: self.images[0].pixels(),
                     second: self.images[1].pixels(),
                     lit: None,
-                    start: self.images[0].start(row * self.side / 2, 0, index),
+                    start: self.images[0].start(0, batch_in_row),
                     layout: &self.layout,
                 };
                 let start = Instant::now();
@@ -110,8 +124,10 @@ impl Pass {
                 );
                 self.correlate.note(batch, start);
                 let start = Instant::now();
-                let peaks = self.correlator.peaks(&self.planes, &search, &mut self.scratch);
-                for lane in 0..LANES.min(self.count - index) {
+                let peaks = self
+                    .correlator
+                    .peaks(&self.planes, &search, &mut self.scratch);
+                for lane in 0..LANES.min(self.count - batch_in_row * LANES) {
                     let near: [[f32; 3]; 3] =
                         self.correlator
                             .neighbourhood(&self.planes, lane, &peaks.first[lane]);
@@ -125,6 +141,19 @@ impl Pass {
         sum
     }
 
+    /// Brings the bands of pixels to row `row` of windows.
+    fn advance(&mut self, row: usize, exposures: &[Vec<f32>; 2]) {
+        let spacing = self.side / 2;
+        let fresh = if row == 0 { self.side } else { spacing };
+        for (image, exposure) in self.images.iter_mut().zip(exposures) {
+            image.scroll(fresh);
+            let kept = self.side - fresh;
+            for (r, mut place) in image.rows_mut().enumerate().skip(kept) {
+                place.fill(&exposure[(row * spacing + r) * SIZE..][..SIZE]);
+            }
+        }
+    }
+
     fn total(&self) -> f64 {
         self.regroup.sum() + self.correlate.sum() + self.peaks.sum()
     }
@@ -132,7 +161,7 @@ impl Pass {
 
 fn main() {
     let repeats = std::env::args().find_map(|a| a.parse().ok()).unwrap_or(20);
-    let exposures = [image(1), image(2)];
+    let exposures = exposures();
     for (name, share) in [("whole planes", 2), ("a quarter of the window", 4)] {
         let mut passes = [64, 32, 32].map(|side| Pass::new(side, side / share));
         let mut sum = 0.0;

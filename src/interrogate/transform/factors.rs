@@ -102,7 +102,12 @@ impl Transform for Factors {
             }
         }
         for part in &self.steps {
-            let (m, s, source, sink) = (part.groups, part.stride, &mut Buffer(here), &mut Whole(there));
+            let (m, s, source, sink) = (
+                part.groups,
+                part.stride,
+                &mut Buffer(here),
+                &mut Whole(there),
+            );
             match &part.turns {
                 Turns::Two(t) => step::<2, true, Radix2, _, _>(m, s, t, source, sink),
                 Turns::Three(t) => step::<3, true, Radix3, _, _>(m, s, t, source, sink),

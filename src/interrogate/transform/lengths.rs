@@ -31,7 +31,9 @@ macro_rules! two_steps {
 
         impl $name {
             pub(super) fn new() -> Self {
-                let mut plan = Self { turns: [[(1.0, 0.0); $a]; $b] };
+                let mut plan = Self {
+                    turns: [[(1.0, 0.0); $a]; $b],
+                };
                 plan.turns.copy_from_slice(&turns::<$a>($b));
                 plan
             }
@@ -81,8 +83,20 @@ macro_rules! three_steps {
             #[inline(always)]
             fn apply<S: Source, T: Sink>(&self, source: &mut S, work: &mut [Phasor], sink: &mut T) {
                 let (here, there) = work[..2 * $length].split_at_mut($length);
-                step::<$a, true, $first, S, Whole>($length / $a, 1, &self.first, source, &mut Whole(here));
-                step::<$b, true, $middle, Buffer, Whole>($c, $a, &self.middle, &mut Buffer(here), &mut Whole(there));
+                step::<$a, true, $first, S, Whole>(
+                    $length / $a,
+                    1,
+                    &self.first,
+                    source,
+                    &mut Whole(here),
+                );
+                step::<$b, true, $middle, Buffer, Whole>(
+                    $c,
+                    $a,
+                    &self.middle,
+                    &mut Buffer(here),
+                    &mut Whole(there),
+                );
                 step::<$c, false, $last, Buffer, T>(1, $a * $b, &[], &mut Buffer(there), sink);
             }
         }

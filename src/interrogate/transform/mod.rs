@@ -44,7 +44,7 @@ pub use direct::{centred, correlate_directly};
 pub use lanes::LANES;
 pub use moments::Moments;
 pub use peaks::{Peak, Peaks, Search};
-pub use windows::{Layout, Polyphase, Windows, gather};
+pub use windows::{Layout, Polyphase, PolyphaseRow, WindowColumns, Windows, gather};
 
 use axis::{Axis, along};
 use lanes::{Lanes, Phasor};
@@ -214,7 +214,12 @@ impl Correlator {
 fn axis(length: usize) -> Result<Axis, TransformError> {
     Axis::new(length).ok_or_else(|| TransformError::Length {
         length,
-        below: (2..length).rev().find(|&n| Axis::new(n).is_some()).unwrap_or(2),
-        above: (length.max(2)..).find(|&n| Axis::new(n).is_some()).unwrap_or(2),
+        below: (2..length)
+            .rev()
+            .find(|&n| Axis::new(n).is_some())
+            .unwrap_or(2),
+        above: (length.max(2)..)
+            .find(|&n| Axis::new(n).is_some())
+            .unwrap_or(2),
     })
 }

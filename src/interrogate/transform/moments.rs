@@ -44,12 +44,18 @@ pub(super) fn means(windows: &Windows, (height, width): (usize, usize), weights:
     }
 }
 
-#[multiversion(targets("x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma", "x86_64+avx2+fma"))]
+#[multiversion(targets(
+    "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
+    "x86_64+avx2+fma"
+))]
 fn plain_means(windows: &Windows, height: usize, width: usize) -> Phasor {
     let columns = &windows.layout.columns[..width];
     let mut sum = Phasor::ZERO;
     for r in 0..height {
-        let (first, second) = (windows.row(windows.first, r), windows.row(windows.second, r));
+        let (first, second) = (
+            windows.row(windows.first, r),
+            windows.row(windows.second, r),
+        );
         let mut row = [Phasor::ZERO; CHAINS];
         let mut fours = columns.chunks_exact(CHAINS);
         for four in &mut fours {
@@ -85,13 +91,19 @@ fn plain_means(windows: &Windows, height: usize, width: usize) -> Phasor {
     sum
 }
 
-#[multiversion(targets("x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma", "x86_64+avx2+fma"))]
+#[multiversion(targets(
+    "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
+    "x86_64+avx2+fma"
+))]
 fn weighted_means(windows: &Windows, height: usize, width: usize, weights: &[f32]) -> Phasor {
     let columns = &windows.layout.columns[..width];
     let mut sum = Phasor::ZERO;
     let mut total: Lanes = [0.0; LANES];
     for r in 0..height {
-        let (first, second) = (windows.row(windows.first, r), windows.row(windows.second, r));
+        let (first, second) = (
+            windows.row(windows.first, r),
+            windows.row(windows.second, r),
+        );
         let lit = windows.lit.map(|lit| windows.row(lit, r));
         let mut row = Phasor::ZERO;
         let mut row_total: Lanes = [0.0; LANES];

@@ -4,6 +4,8 @@
 //! then the row that holds the largest of those; only in that one row is the column looked for
 //! lane by lane. The second search reuses the row maxima of the rows no lane's exclusion touches.
 
+use std::ops::Range;
+
 use multiversion::multiversion;
 
 use super::lanes::{LANES, Lanes};
@@ -50,9 +52,37 @@ pub struct Peaks {
     pub second: [Peak; LANES],
 }
 
-/// The offsets searched along one side, lowest to highest.
-fn offsets(reach: usize, length: usize) -> std::ops::RangeInclusive<i32> {
-    -(reach.min(length / 2) as i32)..=reach.min((length - 1) / 2) as i32
+/// The offsets searched along one side.
+#[derive(Clone, Copy)]
+struct Span {
+    /// The largest negative and positive ones.
+    before: usize,
+    after: usize,
+    /// Length of the side.
+    length: usize,
+}
+
+impl Span {
+    fn new(reach: usize, length: usize) -> Span {
+        Span {
+            before: reach.min(length / 2),
+            after: reach.min((length - 1) / 2),
+            length,
+        }
+    }
+
+    /// The searched stretches of a circular plane: indices, and what to take from an index to get
+    /// its offset. Lowest offset first.
+    fn stretches(self) -> [(Range<usize>, i32); 2] {
+        let negative = self.length - self.before..self.length;
+        [(negative, self.length as i32), (0..self.after + 1, 0)]
+    }
+
+    /// Offsets and their indices, lowest offset first.
+    fn places(self) -> impl Iterator<Item = (i32, usize)> {
+        let stretches = self.stretches().into_iter();
+        stretches.flat_map(|(range, shift)| range.map(move |index| (index as i32 - shift, index)))
+    }
 }
 
 /// Offset as an index of a circular plane.
@@ -81,53 +111,66 @@ pub(super) fn search(
     search: &Search,
     maxima: &mut [Lanes],
 ) -> Peaks {
-    let rows = offsets(search.reach_y, height);
-    let columns = offsets(search.reach_x, width);
-    let line = |row: i32| &planes[wrapped(row, height) * width * LANES..][..width * LANES];
-    for (place, row) in maxima.iter_mut().zip(rows.clone()) {
-        *place = row_maximum(line(row), &columns);
+    let rows = Span::new(search.reach_y, height);
+    let columns = Span::new(search.reach_x, width);
+    let line = |index: usize| &planes[index * width * LANES..][..width * LANES];
+    for (place, (_, index)) in maxima.iter_mut().zip(rows.places()) {
+        *place = row_maximum(line(index), columns);
     }
-    let first = locate(&rows, maxima, |lane, row, height| {
-        columns
-            .clone()
-            .find(|&column| line(row)[wrapped(column, width) * LANES + lane] == height)
-    });
+    let first = locate(planes, rows, columns, maxima, None);
 
     let excluded = Excluded {
         row: first.map(|peak| peak.row),
         column: first.map(|peak| peak.column),
         exclusion: search.exclusion as i32,
     };
-    let lowest = excluded.row.iter().min().map_or(0, |row| row - excluded.exclusion);
-    let highest = excluded.row.iter().max().map_or(0, |row| row + excluded.exclusion);
-    for (place, row) in maxima.iter_mut().zip(rows.clone()) {
-        if (lowest..=highest).contains(&row) {
-            *place = remaining_maximum(line(row), &columns, row, &excluded);
+    let highest = excluded
+        .row
+        .iter()
+        .min()
+        .map_or(0, |row| row - excluded.exclusion);
+    let lowest = excluded
+        .row
+        .iter()
+        .max()
+        .map_or(0, |row| row + excluded.exclusion);
+    for (place, (row, index)) in maxima.iter_mut().zip(rows.places()) {
+        if (highest..=lowest).contains(&row) {
+            *place = remaining_maximum(line(index), columns, row, &excluded);
         }
     }
-    let second = locate(&rows, maxima, |lane, row, height| {
-        columns.clone().find(|&column| {
-            line(row)[wrapped(column, width) * LANES + lane] == height
-                && !excluded.covers(lane, row, column)
-        })
-    });
+    let second = locate(planes, rows, columns, maxima, Some(&excluded));
     Peaks { first, second }
 }
 
-/// The peak of each lane: the first of its highest rows, and the column `find` gives for it.
+/// The peak of each lane: the first of its highest rows, and in it the first column as high.
 fn locate(
-    rows: &std::ops::RangeInclusive<i32>,
+    planes: &[f32],
+    rows: Span,
+    columns: Span,
     maxima: &[Lanes],
-    find: impl Fn(usize, i32, f32) -> Option<i32>,
+    excluded: Option<&Excluded>,
 ) -> [Peak; LANES] {
-    let (heights, best) = highest_rows(*rows.start(), &maxima[..rows.clone().count()]);
+    let first = -(rows.before as i32);
+    let (heights, best) = highest_rows(first, &maxima[..rows.before + rows.after + 1]);
     let mut peaks = [Peak::NONE; LANES];
     for (lane, peak) in peaks.iter_mut().enumerate() {
-        if let Some(column) = find(lane, best[lane], heights[lane]) {
+        let (row, height) = (best[lane], heights[lane]);
+        let start = wrapped(row, rows.length) * columns.length * LANES + lane;
+        let line = &planes[start..][..(columns.length - 1) * LANES + 1];
+        let found = columns.stretches().into_iter().find_map(|(range, shift)| {
+            range
+                .map(|index| (index as i32 - shift, index))
+                .find(|&(column, index)| {
+                    line[index * LANES] == height
+                        && !excluded.is_some_and(|excluded| excluded.covers(lane, row, column))
+                })
+        });
+        if let Some((column, _)) = found {
             *peak = Peak {
                 column,
-                row: best[lane],
-                height: heights[lane],
+                row,
+                height,
             };
         }
     }
@@ -135,7 +178,10 @@ fn locate(
 }
 
 /// The largest of the row maxima and the offset of its row, the lowest offset being `start`.
-#[multiversion(targets("x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma", "x86_64+avx2+fma"))]
+#[multiversion(targets(
+    "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
+    "x86_64+avx2+fma"
+))]
 fn highest_rows(start: i32, maxima: &[Lanes]) -> (Lanes, [i32; LANES]) {
     let (mut heights, mut best) = ([f32::NEG_INFINITY; LANES], [start; LANES]);
     for (row, maximum) in maxima.iter().enumerate() {
@@ -153,12 +199,13 @@ fn highest_rows(start: i32, maxima: &[Lanes]) -> (Lanes, [i32; LANES]) {
 const CHAINS: usize = 4;
 
 /// The largest value of one row of the planes within `columns`.
-#[multiversion(targets("x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma", "x86_64+avx2+fma"))]
-fn row_maximum(line: &[f32], columns: &std::ops::RangeInclusive<i32>) -> Lanes {
-    let width = line.len() / LANES;
-    let left = (-columns.start()) as usize;
+#[multiversion(targets(
+    "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
+    "x86_64+avx2+fma"
+))]
+fn row_maximum(line: &[f32], columns: Span) -> Lanes {
     let mut chains = [[f32::NEG_INFINITY; LANES]; CHAINS];
-    for part in [width - left..width, 0..*columns.end() as usize + 1] {
+    for (part, _) in columns.stretches() {
         let mut fours = line[part.start * LANES..part.end * LANES].chunks_exact(CHAINS * LANES);
         for four in &mut fours {
             let mut x = [[0.0; LANES]; CHAINS];
@@ -180,7 +227,10 @@ fn row_maximum(line: &[f32], columns: &std::ops::RangeInclusive<i32>) -> Lanes {
     }
     let mut maximum = [0.0; LANES];
     for l in 0..LANES {
-        let (a, b) = (larger(chains[0][l], chains[1][l]), larger(chains[2][l], chains[3][l]));
+        let (a, b) = (
+            larger(chains[0][l], chains[1][l]),
+            larger(chains[2][l], chains[3][l]),
+        );
         maximum[l] = larger(a, b);
     }
     maximum
@@ -192,14 +242,11 @@ fn larger(a: f32, b: f32) -> f32 {
 }
 
 /// The largest value of one row of the planes within `columns` that is not excluded.
-#[multiversion(targets("x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma", "x86_64+avx2+fma"))]
-fn remaining_maximum(
-    line: &[f32],
-    columns: &std::ops::RangeInclusive<i32>,
-    row: i32,
-    excluded: &Excluded,
-) -> Lanes {
-    let width = line.len() / LANES;
+#[multiversion(targets(
+    "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
+    "x86_64+avx2+fma"
+))]
+fn remaining_maximum(line: &[f32], columns: Span, row: i32, excluded: &Excluded) -> Lanes {
     // Rows out of the exclusion's reach have it begin beyond every column.
     let (mut from, mut to) = ([i32::MAX; LANES], [i32::MIN; LANES]);
     for l in 0..LANES {
@@ -209,12 +256,15 @@ fn remaining_maximum(
         }
     }
     let mut maximum = [f32::NEG_INFINITY; LANES];
-    for column in columns.clone() {
-        let x = lanes_at(line, wrapped(column, width) * LANES);
-        for l in 0..LANES {
-            let out = (column < from[l]) | (column > to[l]);
-            let value = if out { x[l] } else { f32::NEG_INFINITY };
-            maximum[l] = larger(maximum[l], value);
+    for (range, shift) in columns.stretches() {
+        for index in range {
+            let column = index as i32 - shift;
+            let x = lanes_at(line, index * LANES);
+            for l in 0..LANES {
+                let out = (column < from[l]) | (column > to[l]);
+                let value = if out { x[l] } else { f32::NEG_INFINITY };
+                maximum[l] = larger(maximum[l], value);
+            }
         }
     }
     maximum

@@ -74,7 +74,11 @@ impl Source for WeightedRow<'_> {
 
     #[inline(always)]
     fn factor(&self, index: usize) -> f32 {
-        if self.weights.is_empty() { 1.0 } else { self.weights[index] }
+        if self.weights.is_empty() {
+            1.0
+        } else {
+            self.weights[index]
+        }
     }
 
     #[inline(always)]
@@ -226,7 +230,10 @@ pub(super) fn work_length(height: usize, width: usize) -> usize {
 
 /// Transforms the rows of both windows into `spectrum`, with `means` (first, second) removed, and
 /// returns their energies (first, second): the sums of squares of what was transformed.
-#[multiversion(targets("x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma", "x86_64+avx2+fma"))]
+#[multiversion(targets(
+    "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
+    "x86_64+avx2+fma"
+))]
 pub(super) fn forward_rows<T: Transform>(
     transform: &T,
     height: usize,
@@ -252,7 +259,11 @@ pub(super) fn forward_rows<T: Transform>(
         if plain {
             transform.apply(&mut row, work, &mut sink);
         } else {
-            let weights = if weights.is_empty() { weights } else { &weights[r * width..][..width] };
+            let weights = if weights.is_empty() {
+                weights
+            } else {
+                &weights[r * width..][..width]
+            };
             let lit = windows.lit.map(|lit| windows.row(lit, r));
             let mut weighted = WeightedRow { row, lit, weights };
             transform.apply(&mut weighted, work, &mut sink);
@@ -267,7 +278,10 @@ pub(super) fn forward_rows<T: Transform>(
 }
 
 /// Turns the row spectra of z into those of the correlation plane, in columns 0 to width / 2.
-#[multiversion(targets("x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma", "x86_64+avx2+fma"))]
+#[multiversion(targets(
+    "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
+    "x86_64+avx2+fma"
+))]
 pub(super) fn columns<T: Transform>(
     transform: &T,
     width: usize,
@@ -307,7 +321,10 @@ pub(super) fn columns<T: Transform>(
 }
 
 /// Transforms back the rows of the planes up to `reach` from row 0 on either side.
-#[multiversion(targets("x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma", "x86_64+avx2+fma"))]
+#[multiversion(targets(
+    "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
+    "x86_64+avx2+fma"
+))]
 pub(super) fn inverse_rows<T: Transform>(
     transform: &T,
     height: usize,

@@ -51,81 +51,89 @@ impl Windows<'_> {
     }
 }
 
-/// An image with its columns regrouped by their remainder modulo the window spacing.
+/// The columns of windows on a regular grid: window `index` of a row of windows has its left
+/// edge at column `left + index * spacing`.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct WindowColumns {
+    /// Left edge of the first window, px.
+    pub left: usize,
+    /// From one window to the next, px; at least 1.
+    pub spacing: usize,
+    /// Windows in a row of windows.
+    pub count: usize,
+    /// Width of a window, px.
+    pub width: usize,
+}
+
+impl WindowColumns {
+    /// Batches in a row of windows. The last may have lanes to spare; they hold whatever lies to
+    /// the right and zeros beyond the image.
+    pub fn batches(&self) -> usize {
+        self.count.div_ceil(LANES)
+    }
+
+    /// Places that hold one pixel column of a batch: a lane for each window, and as many more as
+    /// windows overlap, since column c + spacing of one window is column c of the next.
+    fn pitch(&self) -> usize {
+        LANES + self.width.div_ceil(self.spacing) - 1
+    }
+}
+
+/// An image regrouped so that the same pixel of neighbouring windows lies side by side.
 ///
-/// Pixel (row, k * spacing + phase) lies at `[row][phase][k]`. Windows whose left edges are
-/// `spacing` apart then have each of their pixels next to that of their neighbour, and overlapping
-/// windows share storage: one regrouping of the image replaces all gathering of a pass. Unused
-/// places are 0.
+/// For each row, batch of windows, and phase (column modulo the spacing) the pixels of that phase
+/// follow each other. Each window pixel of a batch is then one contiguous load, overlapping windows
+/// share storage, and one regrouping of the image replaces all gathering of a pass.
 #[derive(Clone, Debug)]
 pub struct Polyphase {
-    height: usize,
-    width: usize,
-    spacing: usize,
-    /// Places a phase has in a row.
-    pitch: usize,
+    columns: WindowColumns,
     pixels: Vec<f32>,
 }
 
 impl Polyphase {
-    /// A black image of `height` x `width` pixels for windows `spacing` columns apart (at least 1).
-    pub fn new(height: usize, width: usize, spacing: usize) -> Polyphase {
-        let spacing = spacing.max(1);
-        // A last batch may reach LANES - 1 windows beyond the last one inside the image.
-        let pitch = (width.div_ceil(spacing) + LANES).next_multiple_of(LANES);
-        Polyphase {
-            height,
-            width,
-            spacing,
-            pitch,
-            pixels: vec![0.0; height * spacing * pitch],
-        }
+    /// A black image of `height` rows for windows in `columns`.
+    pub fn new(height: usize, columns: WindowColumns) -> Polyphase {
+        let mut image = Polyphase {
+            columns,
+            pixels: Vec::new(),
+        };
+        image.pixels = vec![0.0; height * image.row_length()];
+        image
     }
 
-    /// Regroups a whole image, row `r` of which starts at `image[r * stride]`.
-    ///
-    /// # Panics
-    /// If `image` is too short for the height and width given at the start.
-    pub fn fill(&mut self, image: &[f32], stride: usize) {
-        let (width, spacing, pitch) = (self.width, self.spacing, self.pitch);
-        for (row, place) in self.rows_mut().enumerate() {
-            regroup(&image[row * stride..][..width], spacing, pitch, place);
-        }
-    }
-
-    /// The rows from top to bottom, each to be written by [`Self::regroup_row`]; for filling from several
-    /// threads.
-    pub fn rows_mut(&mut self) -> std::slice::ChunksExactMut<'_, f32> {
-        self.pixels.chunks_exact_mut(self.spacing * self.pitch)
-    }
-
-    /// Places in one row of [`Self::rows_mut`].
+    /// Places in one row.
     pub fn row_length(&self) -> usize {
-        self.spacing * self.pitch
+        self.columns.batches() * self.batch_length()
     }
 
-    /// Writes one row of an image `width` pixels wide into `place`, a row of an image regrouped for
-    /// the same width and `spacing`.
+    /// Places in one row of one batch.
+    fn batch_length(&self) -> usize {
+        self.columns.spacing * self.columns.pitch()
+    }
+
+    /// Regroups a whole image `width` pixels wide whose row `r` starts at `image[r * stride]`.
     ///
     /// # Panics
-    /// If `place` is not as long as [`Self::row_length`].
-    pub fn regroup_row(row: &[f32], spacing: usize, place: &mut [f32]) {
-        regroup(row, spacing, place.len() / spacing, place);
+    /// If `image` has fewer rows than were said at the start.
+    pub fn fill(&mut self, image: &[f32], stride: usize, width: usize) {
+        for (r, mut row) in self.rows_mut().enumerate() {
+            row.fill(&image[r * stride..][..width]);
+        }
     }
 
-    /// Height of the image, px.
-    pub fn height(&self) -> usize {
-        self.height
+    /// Moves everything up by `rows`, losing as many at the top; the same number at the bottom then
+    /// wait to be filled. A band as high as one window that scrolls down an image stays in the
+    /// nearer caches, which a whole image does not.
+    pub fn scroll(&mut self, rows: usize) {
+        let lost = (rows * self.row_length()).min(self.pixels.len());
+        self.pixels.copy_within(lost.., 0);
     }
 
-    /// Width of the image, px.
-    pub fn width(&self) -> usize {
-        self.width
-    }
-
-    /// Columns between neighbouring windows, px.
-    pub fn spacing(&self) -> usize {
-        self.spacing
+    /// The rows from top to bottom, each to be filled by itself, on any thread.
+    pub fn rows_mut(&mut self) -> impl ExactSizeIterator<Item = PolyphaseRow<'_>> {
+        let (columns, length) = (self.columns, self.row_length());
+        let rows = self.pixels.chunks_exact_mut(length);
+        rows.map(move |places| PolyphaseRow { columns, places })
     }
 
     /// The regrouped pixels, to be handed to [`Windows`].
@@ -133,50 +141,75 @@ impl Polyphase {
         &self.pixels
     }
 
-    /// The layout of windows `width` columns wide, the left edge of the first at column `left`.
-    pub fn layout(&self, left: usize, width: usize) -> Layout {
-        let phase = left % self.spacing;
+    /// How the pixels of a window follow; the same for all batches.
+    pub fn layout(&self) -> Layout {
+        let WindowColumns { spacing, width, .. } = self.columns;
         Layout {
             row_stride: self.row_length(),
-            columns: (phase..phase + width)
-                .map(|column| (column % self.spacing) * self.pitch + column / self.spacing)
+            columns: (0..width)
+                .map(|column| (column % spacing) * self.columns.pitch() + column / spacing)
                 .collect(),
         }
     }
 
-    /// Start of the batch whose first window has its top row at `top` and is number `index` of its
-    /// row of windows, the left edge of number 0 being at column `left`.
-    pub fn start(&self, top: usize, left: usize, index: usize) -> usize {
-        top * self.row_length() + left / self.spacing + index
+    /// Start of batch `batch` of the windows whose top row is `top`.
+    pub fn start(&self, top: usize, batch: usize) -> usize {
+        top * self.row_length() + batch * self.batch_length()
     }
 }
 
-/// Side of the square tiles in which a row is regrouped.
-const TILE: usize = 4;
+/// One row of a [`Polyphase`] image.
+#[derive(Debug)]
+pub struct PolyphaseRow<'a> {
+    columns: WindowColumns,
+    places: &'a mut [f32],
+}
 
-#[multiversion(targets("x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma", "x86_64+avx2+fma"))]
-fn regroup(row: &[f32], spacing: usize, pitch: usize, place: &mut [f32]) {
-    let groups = row.len() / spacing;
-    let (tiled_groups, tiled_phases) = (groups - groups % TILE, spacing - spacing % TILE);
-    for k in (0..tiled_groups).step_by(TILE) {
-        for phase in (0..tiled_phases).step_by(TILE) {
-            let mut tile = [[0.0_f32; TILE]; TILE];
-            for (i, line) in tile.iter_mut().enumerate() {
-                line.copy_from_slice(&row[(k + i) * spacing + phase..][..TILE]);
-            }
-            for j in 0..TILE {
-                let line = [tile[0][j], tile[1][j], tile[2][j], tile[3][j]];
-                place[(phase + j) * pitch + k..][..TILE].copy_from_slice(&line);
-            }
-        }
-        for phase in tiled_phases..spacing {
-            for i in k..k + TILE {
-                place[phase * pitch + i] = row[i * spacing + phase];
-            }
-        }
+impl PolyphaseRow<'_> {
+    /// Regroups one row of pixels; places beyond its end become 0.
+    pub fn fill(&mut self, pixels: &[f32]) {
+        regroup(pixels, self.columns, self.places);
     }
-    for (column, value) in row.iter().enumerate().skip(tiled_groups * spacing) {
-        place[(column % spacing) * pitch + column / spacing] = *value;
+}
+
+/// Writes pixel left + (batch * LANES + i) * spacing + phase to place (batch, phase, i), in order;
+/// the usual spacings with constant strides.
+fn regroup(pixels: &[f32], columns: WindowColumns, places: &mut [f32]) {
+    match columns.spacing {
+        4 => regroup_by(4, pixels, columns, places),
+        8 => regroup_by(8, pixels, columns, places),
+        12 => regroup_by(12, pixels, columns, places),
+        16 => regroup_by(16, pixels, columns, places),
+        24 => regroup_by(24, pixels, columns, places),
+        32 => regroup_by(32, pixels, columns, places),
+        64 => regroup_by(64, pixels, columns, places),
+        spacing => regroup_by(spacing, pixels, columns, places),
+    }
+}
+
+#[inline(always)]
+fn regroup_by(spacing: usize, pixels: &[f32], columns: WindowColumns, places: &mut [f32]) {
+    let pitch = columns.pitch();
+    let mut edge = columns.left;
+    for places in places.chunks_exact_mut(spacing * pitch) {
+        for (phase, places) in places.chunks_exact_mut(pitch).enumerate() {
+            let there = pixels.get(edge + phase..).unwrap_or_default();
+            let (lanes, rest) = places.split_at_mut(LANES);
+            if there.len() > (LANES - 1) * spacing {
+                for (i, place) in lanes.iter_mut().enumerate() {
+                    *place = there[i * spacing];
+                }
+            } else {
+                for (i, place) in lanes.iter_mut().enumerate() {
+                    *place = there.get(i * spacing).copied().unwrap_or(0.0);
+                }
+            }
+            for (i, place) in rest.iter_mut().enumerate() {
+                let beyond = there.get((LANES + i) * spacing);
+                *place = beyond.copied().unwrap_or(0.0);
+            }
+        }
+        edge += LANES * spacing;
     }
 }
 
@@ -204,8 +237,14 @@ pub fn gather(
     }
 }
 
+/// Side of the square tiles in which windows are interleaved.
+const TILE: usize = 4;
+
 /// Interleaves one row of each window; empty rows count as 0.
-#[multiversion(targets("x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma", "x86_64+avx2+fma"))]
+#[multiversion(targets(
+    "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
+    "x86_64+avx2+fma"
+))]
 fn interleave(rows: &[&[f32]; LANES], out: &mut [f32]) {
     let width = out.len() / LANES;
     let tiled = width - width % TILE;
