@@ -5,6 +5,12 @@
 //!
 //! `cargo bench --bench transforms [-- repeats]`
 
+#![allow(
+    clippy::print_stdout,
+    clippy::expect_used,
+    reason = "a benchmark prints, and has nobody to report an error to"
+)]
+
 use std::time::Instant;
 
 use kolk::interrogate::transform::{
@@ -85,7 +91,7 @@ impl Pass {
             reach,
             count,
             scratch: correlator.scratch(),
-            planes: vec![0.0; correlator.planes_length()],
+            planes: vec![0.0; correlator.planes_length() + 16],
             correlator,
             layout: images[0].layout(),
             images,
@@ -115,22 +121,19 @@ impl Pass {
                     start: self.images[0].start(0, batch_in_row),
                     layout: &self.layout,
                 };
+                let o = self.planes.as_ptr().align_offset(64);
+                let planes = &mut self.planes[o..];
                 let start = Instant::now();
-                let moments = self.correlator.correlate(
-                    &windows,
-                    self.reach + 2,
-                    &mut self.planes,
-                    &mut self.scratch,
-                );
+                let moments =
+                    self.correlator
+                        .correlate(&windows, self.reach + 2, planes, &mut self.scratch);
                 self.correlate.note(batch, start);
                 let start = Instant::now();
-                let peaks = self
-                    .correlator
-                    .peaks(&self.planes, &search, &mut self.scratch);
+                let peaks = self.correlator.peaks(planes, &search, &mut self.scratch);
                 for lane in 0..LANES.min(self.count - batch_in_row * LANES) {
                     let near: [[f32; 3]; 3] =
                         self.correlator
-                            .neighbourhood(&self.planes, lane, &peaks.first[lane]);
+                            .neighbourhood(planes, lane, &peaks.first[lane]);
                     let second = peaks.second[lane].height;
                     sum += f64::from((near[1][1] + second) * moments.normalization(lane));
                 }

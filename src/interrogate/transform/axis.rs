@@ -6,6 +6,10 @@ use super::lengths::{
 };
 
 /// The transform along one side of the windows.
+#[allow(
+    clippy::large_enum_variant,
+    reason = "a plan has two of them; a box would hide the fixed sizes from the compiler"
+)]
 #[derive(Clone, Debug)]
 pub(super) enum Axis {
     Of8(Length8),

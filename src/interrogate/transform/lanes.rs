@@ -31,15 +31,6 @@ impl Phasor {
         re: [0.0; LANES],
         im: [0.0; LANES],
     };
-
-    /// Real and imaginary part exchanged: what turns a forward transform into an inverse one.
-    #[inline(always)]
-    pub(super) fn swapped(self) -> Phasor {
-        Phasor {
-            re: self.im,
-            im: self.re,
-        }
-    }
 }
 
 /// Where the samples of a transform come from: one or two stored samples and a factor, combined

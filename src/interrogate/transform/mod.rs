@@ -27,6 +27,11 @@
 //! butterflies. What pays is leaving out rows of the plane: the `reach` of
 //! [`Correlator::correlate`].
 
+#![allow(
+    clippy::needless_range_loop,
+    reason = "loops over lanes index several arrays of fixed size: the form that vectorises whole"
+)]
+
 mod axis;
 mod butterfly;
 mod direct;
@@ -183,12 +188,7 @@ impl Correlator {
         along!(&self.rows, transform => spectrum::inverse_rows(
             transform, height, reach, spectrum, work, planes
         ));
-        Moments {
-            first_mean: means.re,
-            second_mean: means.im,
-            first_energy: energy.re,
-            second_energy: energy.im,
-        }
+        Moments::new(&means, &energy, height * width)
     }
 
     /// The highest peak of each plane and the highest beside it, within the search rectangle.

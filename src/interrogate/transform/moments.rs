@@ -13,13 +13,33 @@ pub struct Moments {
     pub first_mean: [f32; LANES],
     /// Weighted mean grey level of the second windows.
     pub second_mean: [f32; LANES],
-    /// Sum of squares of the first windows after mean removal and weighting.
+    /// Sum of squares of the first windows after mean removal and weighting; 0 where it is no more
+    /// than rounding can make of a window without contrast.
     pub first_energy: [f32; LANES],
-    /// Sum of squares of the second windows after mean removal and weighting.
+    /// The same of the second windows.
     pub second_energy: [f32; LANES],
 }
 
 impl Moments {
+    /// From means and energies (first, second) of windows of `pixels` px.
+    pub(super) fn new(means: &Phasor, energies: &Phasor, pixels: usize) -> Moments {
+        // A mean is rounded to about 1e-7 of itself, and so is each difference from it.
+        let contrast = |energy: f32, mean: f32| {
+            let rounding = 1e-6 * mean;
+            if energy > pixels as f32 * rounding * rounding {
+                energy
+            } else {
+                0.0
+            }
+        };
+        Moments {
+            first_mean: means.re,
+            second_mean: means.im,
+            first_energy: std::array::from_fn(|l| contrast(energies.re[l], means.re[l])),
+            second_energy: std::array::from_fn(|l| contrast(energies.im[l], means.im[l])),
+        }
+    }
+
     /// The factor that turns a plane of window `lane` into correlation coefficients:
     /// 1 / sqrt(first energy x second energy), or 0 where a window has no contrast.
     pub fn normalization(&self, lane: usize) -> f32 {

@@ -158,20 +158,19 @@ fn locate(
         let (row, height) = (best[lane], heights[lane]);
         let start = wrapped(row, rows.length) * columns.length * LANES + lane;
         let line = &planes[start..][..(columns.length - 1) * LANES + 1];
-        let found = columns.stretches().into_iter().find_map(|(range, shift)| {
-            range
-                .map(|index| (index as i32 - shift, index))
-                .find(|&(column, index)| {
-                    line[index * LANES] == height
-                        && !excluded.is_some_and(|excluded| excluded.covers(lane, row, column))
-                })
-        });
-        if let Some((column, _)) = found {
-            *peak = Peak {
-                column,
-                row,
-                height,
-            };
+        'found: for (range, shift) in columns.stretches() {
+            for index in range {
+                let column = index as i32 - shift;
+                let free = excluded.is_none_or(|excluded| !excluded.covers(lane, row, column));
+                if line[index * LANES] == height && free {
+                    *peak = Peak {
+                        column,
+                        row,
+                        height,
+                    };
+                    break 'found;
+                }
+            }
         }
     }
     peaks
