@@ -101,36 +101,52 @@ pub(super) fn step<const R: usize, const TURNED: bool, B: Butterfly<R>, S: Sourc
     source: &mut S,
     sink: &mut T,
 ) {
-    for p in 0..groups {
-        let turn = if TURNED { turns[p] } else { [(1.0, 0.0); R] };
-        for q in 0..stride {
-            let mut x = [Phasor::ZERO; R];
-            let mut partner = [Phasor::ZERO; R];
-            let mut factor = [0.0; R];
+    let unturned = [(1.0, 0.0); R];
+    group::<R, false, B, S, T>(0, groups, stride, &unturned, source, sink);
+    if TURNED {
+        for p in 1..groups {
+            group::<R, true, B, S, T>(p, groups, stride, &turns[p], source, sink);
+        }
+    }
+}
+
+/// The butterflies of group `p` of a step.
+#[inline(always)]
+fn group<const R: usize, const TURNED: bool, B: Butterfly<R>, S: Source, T: Sink>(
+    p: usize,
+    groups: usize,
+    stride: usize,
+    turn: &[Sample; R],
+    source: &mut S,
+    sink: &mut T,
+) {
+    for q in 0..stride {
+        let mut x = [Phasor::ZERO; R];
+        let mut partner = [Phasor::ZERO; R];
+        let mut factor = [0.0; R];
+        for k in 0..R {
+            let index = q + stride * (p + groups * k);
+            x[k] = source.fetch(index);
+            partner[k] = source.partner(index);
+            factor[k] = source.factor(index);
+        }
+        let mut y = [Phasor::ZERO; R];
+        for l in 0..LANES {
+            let mut z = [(0.0, 0.0); R];
             for k in 0..R {
-                let index = q + stride * (p + groups * k);
-                x[k] = source.fetch(index);
-                partner[k] = source.partner(index);
-                factor[k] = source.factor(index);
+                let here = (x[k].re[l], x[k].im[l]);
+                let other = (partner[k].re[l], partner[k].im[l]);
+                z[k] = source.lane(here, other, factor[k], l);
             }
-            let mut y = [Phasor::ZERO; R];
-            for l in 0..LANES {
-                let mut z = [(0.0, 0.0); R];
-                for k in 0..R {
-                    let here = (x[k].re[l], x[k].im[l]);
-                    let other = (partner[k].re[l], partner[k].im[l]);
-                    z[k] = source.lane(here, other, factor[k], l);
-                }
-                z = B::apply(z);
-                (y[0].re[l], y[0].im[l]) = z[0];
-                for k in 1..R {
-                    let turned = if TURNED { product(z[k], turn[k]) } else { z[k] };
-                    (y[k].re[l], y[k].im[l]) = turned;
-                }
+            z = B::apply(z);
+            (y[0].re[l], y[0].im[l]) = z[0];
+            for k in 1..R {
+                let turned = if TURNED { product(z[k], turn[k]) } else { z[k] };
+                (y[k].re[l], y[k].im[l]) = turned;
             }
-            for k in 0..R {
-                sink.put(q + stride * (R * p + k), &y[k]);
-            }
+        }
+        for k in 0..R {
+            sink.put(q + stride * (R * p + k), &y[k]);
         }
     }
 }
