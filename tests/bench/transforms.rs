@@ -14,7 +14,7 @@
 use std::time::Instant;
 
 use kolk::interrogate::transform::{
-    Correlator, LANES, Layout, Polyphase, Scratch, Search, WindowColumns, Windows,
+    Correlator, LANES, Layout, Planes, Polyphase, Scratch, Search, WindowColumns, Windows,
 };
 
 const SIZE: usize = 1024;
@@ -46,7 +46,7 @@ struct Pass {
     count: usize,
     correlator: Correlator,
     scratch: Scratch,
-    planes: Vec<f32>,
+    planes: Planes,
     images: [Polyphase; 2],
     layout: Layout,
     /// Least time so far of each part of the work, ms.
@@ -91,7 +91,7 @@ impl Pass {
             reach,
             count,
             scratch: correlator.scratch(),
-            planes: vec![0.0; correlator.planes_length() + 16],
+            planes: correlator.planes(),
             correlator,
             layout: images[0].layout(),
             images,
@@ -121,19 +121,22 @@ impl Pass {
                     start: self.images[0].start(0, batch_in_row),
                     layout: &self.layout,
                 };
-                let o = self.planes.as_ptr().align_offset(64);
-                let planes = &mut self.planes[o..];
                 let start = Instant::now();
-                let moments =
-                    self.correlator
-                        .correlate(&windows, self.reach + 2, planes, &mut self.scratch);
+                let moments = self.correlator.correlate(
+                    &windows,
+                    self.reach + 2,
+                    &mut self.planes,
+                    &mut self.scratch,
+                );
                 self.correlate.note(batch, start);
                 let start = Instant::now();
-                let peaks = self.correlator.peaks(planes, &search, &mut self.scratch);
+                let peaks = self
+                    .correlator
+                    .peaks(&self.planes, &search, &mut self.scratch);
                 for lane in 0..LANES.min(self.count - batch_in_row * LANES) {
                     let near: [[f32; 3]; 3] =
                         self.correlator
-                            .neighbourhood(planes, lane, &peaks.first[lane]);
+                            .neighbourhood(&self.planes, lane, &peaks.first[lane]);
                     let second = peaks.second[lane].height;
                     sum += f64::from((near[1][1] + second) * moments.normalization(lane));
                 }

@@ -13,6 +13,7 @@
 //! | `butterfly.rs`, `lanes.rs` | one-dimensional transforms over lanes |
 //! | `lengths.rs`, `factors.rs`, `axis.rs` | the usual lengths, all others, the choice between them |
 //! | `spectrum.rs` | the three sweeps from window pairs to planes |
+//! | `planes.rs` | room for the planes of a batch |
 //! | `peaks.rs` | where the planes are highest |
 //! | `direct.rs` | the slow, obvious reference |
 //!
@@ -40,6 +41,7 @@ mod lanes;
 mod lengths;
 mod moments;
 mod peaks;
+mod planes;
 mod spectrum;
 #[cfg(test)]
 mod tests;
@@ -49,6 +51,7 @@ pub use direct::{centred, correlate_directly};
 pub use lanes::LANES;
 pub use moments::Moments;
 pub use peaks::{Peak, Peaks, Search};
+pub use planes::Planes;
 pub use windows::{Layout, Polyphase, PolyphaseRow, WindowColumns, Windows, gather};
 
 use axis::{Axis, along};
@@ -159,6 +162,11 @@ impl Correlator {
             work: vec![Phasor::ZERO; work],
             maxima: vec![[0.0; LANES]; self.height],
         }
+    }
+
+    /// Room for the planes of a batch; a slice of [`Self::planes_length`] numbers.
+    pub fn planes(&self) -> Planes {
+        Planes::new(self.planes_length())
     }
 
     /// Correlates a batch of window pairs.
