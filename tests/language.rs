@@ -97,7 +97,7 @@ fn check(case: &Case, folder: &Path) -> Vec<String> {
                 "f64",
                 "ImmutableString",
                 "alloc::",
-                "rhai",
+                "rhai::",
                 "\u{1b}",
             ] {
                 if shown.contains(word) {

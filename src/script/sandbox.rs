@@ -98,7 +98,7 @@ impl Sandbox {
     }
 
     /// Where to write `path`, taken from the output folder when relative; makes the folders it
-    /// needs and notes the file as written.
+    /// needs.
     ///
     /// # Errors
     /// A path outside the output folder; a folder that cannot be made.
@@ -113,11 +113,15 @@ impl Sandbox {
             path: folder.display().to_string(),
             reason,
         })?;
-        let mut written = self.written.borrow_mut();
-        if !written.contains(&full) {
-            written.push(full.clone());
-        }
         Ok(full)
+    }
+
+    /// Notes a file as written.
+    pub(super) fn note(&self, file: PathBuf) {
+        let mut written = self.written.borrow_mut();
+        if !written.contains(&file) {
+            written.push(file);
+        }
     }
 }
 
@@ -188,6 +192,8 @@ mod tests {
         let path = sandbox.writable(Path::new("tables/eddies.csv")).unwrap();
         assert_eq!(path, sandbox.start().join("out/tables/eddies.csv"));
         assert!(path.parent().unwrap().is_dir());
+        sandbox.note(path.clone());
+        sandbox.note(path.clone());
         assert_eq!(sandbox.written(), [path]);
         for path in ["../a.csv", "/tmp/a.csv", ".", "", "tables/../../a.csv"] {
             assert!(sandbox.writable(Path::new(path)).is_err(), "{path}");

@@ -194,15 +194,15 @@ fn place(source: &str, text: &str, position: Position, key: Option<&str>) -> Opt
         .take(line - 1)
         .map(|line| line.chars().count() + 1)
         .sum();
-    let total = text.chars().count();
     // A script that ends too early fails behind its last character: show that character.
-    let start = (before + column - 1).min(total.saturating_sub(1));
+    let last = text.trim_end().chars().count().saturating_sub(1);
+    let start = (before + column - 1).min(last);
     let rest: String = text.chars().skip(start).collect();
     let span = key
         .and_then(|key| key_span(&rest, key))
         .unwrap_or_else(|| 0..token_length(&rest));
     let span = span.start + start..span.end + start;
-    let (line, column) = if span.start == start {
+    let (line, column) = if span.start == before + column - 1 {
         (line, column)
     } else {
         line_and_column(text, span.start)

@@ -228,8 +228,7 @@ fn files(room: &mut Room) {
         .errors("the file cannot be written")
         .example(with_a_flow!("flow.save(\"flow.csv\")"), "")
         .does(|flow: &VectorField, file: String, call: Call| {
-            save_vectors(flow, &call.writable(&file)?)?;
-            Ok::<_, Fault>(())
+            call.write(&file, |path| save_vectors(flow, path))
         });
     room.function("read_vectors")
         .about(

@@ -12,7 +12,9 @@ use super::field::quantity;
 use super::quantity::unit;
 use super::vortex::{Found, FoundEddies};
 use crate::field::{ScalarField, Trace, VectorField};
-use crate::figure::{ArrowOptions, Bars, Curve, Figure, OutlineSet, ShadeOptions, eddy_transect};
+use crate::figure::{
+    ArrowOptions, Bars, Curve, Figure, FigureError, OutlineSet, ShadeOptions, eddy_transect,
+};
 use crate::quantity::Measured;
 
 impl Kind for Figure {
@@ -318,7 +320,12 @@ fn sheet(room: &mut Room) {
         .errors("there is nothing to draw, units clash, or the file cannot be written")
         .example("figure().line([0, 1], [0, 1]).save(\"line.png\")", "")
         .does(|figure: &Figure, file: String, call: Call| {
-            Ok::<_, Fault>(figure.save(&call.writable(&file)?)?)
+            call.write(&file, |path| {
+                figure.save(path).map_err(|error| match error {
+                    FigureError::Extension(_) => FigureError::Extension((&file).into()),
+                    error => error,
+                })
+            })
         });
 }
 

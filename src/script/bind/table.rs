@@ -11,6 +11,7 @@ use super::super::kind::{Kind, kind_name, number, with_article};
 use super::vortex::FoundEddies;
 use crate::quantity::{Measured, Unit};
 use crate::table::{Cell, Column, Table, eddies, eddies_of_each};
+use crate::vortex::Eddies;
 
 /// Rows a table shows of itself.
 const SHOWN: usize = 12;
@@ -48,19 +49,29 @@ fn making(room: &mut Room) {
         .about(
             "A table of columns, each given as [heading, list]. A heading carries the unit of its \
              numbers (width_mm); measured values bring their own and take two columns, themselves \
-             and their uncertainty.",
+             and their uncertainty. A list of the eddies of several fields, as all.eddies() gives \
+             it, makes one table with the number of the field in front.",
         )
         .words("make build columns rows spreadsheet")
-        .input("columns", "", "the columns, from the left")
+        .input("columns", "", "the columns, from the left; or the eddies of several fields")
         .errors("columns differ in length, a heading stands twice, or a cell is no number or text")
         .example(
             "table([[\"width\", [measured(11.8, 0.4, \"mm\")]], [\"run\", [1]]])",
             "width_mm  width_unc_mm  run\n    11.8           0.4    1",
         )
-        .does(|columns: Vec<Dynamic>| build(columns));
+        .example(
+            "let flow = shielded_gaussian(#{ x_px: 50, y_px: 50, core_radius_px: 15, peak_vorticity_per_frame: 0.3 }).field(#{ nx: 51, ny: 51, spacing_px: 2 });\n[flow.eddies(), flow.eddies()].table().column(\"field\")",
+            "[0, 1]",
+        )
+        .does(build);
 }
 
 fn build(columns: Vec<Dynamic>) -> Result<Table, Fault> {
+    let found: Vec<_> = columns.iter().filter_map(of_a_field).collect();
+    if !found.is_empty() && found.len() == columns.len() {
+        let found: Vec<&Eddies> = found.iter().map(|f| &**f).collect();
+        return Ok(eddies_of_each(&found)?);
+    }
     let mut table = Table::new();
     for column in columns {
         let wrong =
@@ -141,33 +152,13 @@ fn of_eddies(room: &mut Room) {
             "[50]",
         )
         .does(|found: &FoundEddies| eddies(&found.0));
-    room.method::<Array>("table")
-        .about(
-            "The eddies of several fields (what `all.eddies()` gives) as one table, with the \
-             number of the field in front.",
-        )
-        .words("csv columns export results eddies series")
-        .errors("an item of the list is not the eddies of a field, or their units differ")
-        .example(
-            "let flow = shielded_gaussian(#{ x_px: 50, y_px: 50, core_radius_px: 15, peak_vorticity_per_frame: 0.3 }).field(#{ nx: 51, ny: 51, spacing_px: 2 });\n[flow.eddies(), flow.eddies()].table().column(\"field\")",
-            "[0, 1]",
-        )
-        .does(|list: &Array| {
-            let found = list
-                .iter()
-                .enumerate()
-                .map(|(i, item)| {
-                    item.read_lock::<Arc<FoundEddies>>().map(|f| Arc::clone(&f.0)).ok_or_else(|| {
-                        Fault::new(format!(
-                            "item {i} of the list is {}, not the eddies of a field",
-                            with_article(kind_name(item))
-                        ))
-                    })
-                })
-                .collect::<Result<Vec<_>, _>>()?;
-            let found: Vec<_> = found.iter().map(|f| &**f).collect();
-            Ok::<Table, Fault>(eddies_of_each(&found)?)
-        });
+}
+
+/// The eddies of a field, where the value is that.
+fn of_a_field(value: &Dynamic) -> Option<Arc<Eddies>> {
+    value
+        .read_lock::<Arc<FoundEddies>>()
+        .map(|found| Arc::clone(&found.0))
 }
 
 fn choosing(room: &mut Room) {
@@ -240,9 +231,7 @@ fn files(room: &mut Room) {
         .input("file", "", "file name, below the output folder")
         .errors("the file cannot be written")
         .example(with_a_table!("t.save(\"widths.csv\")"), "")
-        .does(|table: &Table, file: String, call: Call| {
-            Ok::<_, Fault>(table.save(&call.writable(&file)?)?)
-        });
+        .does(|table: &Table, file: String, call: Call| call.write(&file, |path| table.save(path)));
     room.function("read_table")
         .about("The table in a CSV file whose first line holds the headings.")
         .words("open load import csv file")
