@@ -30,7 +30,7 @@ impl From<f64> for Operand<'_> {
 }
 
 impl From<&Measured> for Operand<'_> {
-    /// The number with its unit; fields of one scalar carry no uncertainty yet, so it is dropped.
+    /// The number with its unit; scalar fields carry no uncertainty, so it is dropped.
     fn from(measured: &Measured) -> Self {
         Operand::Number(measured.value(), measured.unit())
     }

@@ -16,8 +16,9 @@ pub(super) enum Axis {
 
 /// Derivative of `f` along `axis` at node spacing `spacing`.
 ///
-/// Whole rows are combined at once wherever the stencil fits the array; a NaN among the nodes
-/// makes the sum NaN, and those cells, with the edges, are then done one by one.
+/// Whole rows are combined at once wherever the stencil fits the array. A NaN among the nodes
+/// makes the sum NaN; those cells, cells that are NaN themselves, and the edges are then done one
+/// by one.
 pub(super) fn derivative(f: &Array2<f64>, axis: Axis, spacing: f64, scheme: Scheme) -> Array2<f64> {
     let (ny, nx) = f.dim();
     let f = f.as_standard_layout();
@@ -29,25 +30,42 @@ pub(super) fn derivative(f: &Array2<f64>, axis: Axis, spacing: f64, scheme: Sche
         let Some(row) = row.as_slice_mut() else {
             continue;
         };
-        let whole = j >= margin && j + margin < ny && nx > 2 * margin;
-        if whole {
-            combine(nodes, nx, j, margin, &taps, row);
-        }
-        let beside = if whole { margin } else { nx };
-        for i in 0..nx {
-            let edge = i < beside || i + beside >= nx;
-            if edge || row[i].is_nan() {
-                row[i] = one_by_one(nodes, (ny, nx), (j, i), axis, scheme) / spacing;
+        let here = &nodes[j * nx..(j + 1) * nx];
+        let singly = |i: usize| one_by_one(nodes, (ny, nx), (j, i), axis, scheme) / spacing;
+        if j < margin || j + margin >= ny || nx <= 2 * margin {
+            for (i, value) in row.iter_mut().enumerate() {
+                *value = singly(i);
             }
+            continue;
+        }
+        combine(nodes, nx, j, margin, &taps, row);
+        if has_nan(row) || has_nan(here) {
+            for (i, value) in row.iter_mut().enumerate() {
+                if value.is_nan() || here[i].is_nan() {
+                    *value = singly(i);
+                }
+            }
+        }
+        for i in (0..margin).chain(nx - margin..nx) {
+            row[i] = singly(i);
         }
     }
     out
 }
 
-/// Row and column offsets with weights; the centre is always among them, so that a cell without
-/// a value gets no derivative.
-fn stencil(axis: Axis, scheme: Scheme, spacing: f64) -> Vec<(isize, isize, f64)> {
-    let mut taps = vec![(0, 0, 0.0)];
+/// Looks at every value rather than stopping at the first NaN, which lets the compiler take
+/// several at a time.
+fn has_nan(row: &[f64]) -> bool {
+    row.iter()
+        .fold(false, |found, value| found | value.is_nan())
+}
+
+/// A row offset, a column offset and a weight.
+type Tap = (isize, isize, f64);
+
+/// The scheme's taps in groups of four, filled up with taps of no weight.
+fn stencil(axis: Axis, scheme: Scheme, spacing: f64) -> Vec<[Tap; 4]> {
+    let mut taps: Vec<Tap> = Vec::new();
     for &(along, weight) in scheme.along() {
         for &(across, share) in scheme.across() {
             let weight = weight * share / spacing;
@@ -57,24 +75,21 @@ fn stencil(axis: Axis, scheme: Scheme, spacing: f64) -> Vec<(isize, isize, f64)>
             }
         }
     }
-    taps
+    taps.resize(taps.len().next_multiple_of(4), (0, 0, 0.0));
+    taps.as_chunks().0.to_vec()
 }
 
 /// Weighted sum of shifted rows into the columns that are `margin` or more from the edge.
-fn combine(
-    nodes: &[f64],
-    nx: usize,
-    j: usize,
-    margin: usize,
-    taps: &[(isize, isize, f64)],
-    row: &mut [f64],
-) {
+fn combine(nodes: &[f64], nx: usize, j: usize, margin: usize, taps: &[[Tap; 4]], row: &mut [f64]) {
     let row = &mut row[margin..nx - margin];
-    for &(dj, di, weight) in taps {
-        let start = j.wrapping_add_signed(dj) * nx + margin.wrapping_add_signed(di);
-        let shifted = &nodes[start..start + row.len()];
-        for (sum, value) in row.iter_mut().zip(shifted) {
-            *sum += weight * value;
+    for four in taps {
+        let [a, b, c, d] = four.map(|(dj, di, _)| {
+            let start = j.wrapping_add_signed(dj) * nx + margin.wrapping_add_signed(di);
+            &nodes[start..start + row.len()]
+        });
+        let [wa, wb, wc, wd] = four.map(|(_, _, weight)| weight);
+        for (k, sum) in row.iter_mut().enumerate() {
+            *sum += wa * a[k] + wb * b[k] + wc * c[k] + wd * d[k];
         }
     }
 }

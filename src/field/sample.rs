@@ -43,31 +43,21 @@ struct Span {
 impl Span {
     /// Around the position `t` in cells along an axis of `n` nodes; `None` outside.
     fn around(t: f64, n: usize) -> Option<Span> {
-        // A point that rounding put beside a node or the edge belongs on it.
-        let t = if (t - t.round()).abs() < 1e-9 {
-            t.round()
-        } else {
-            t
-        };
-        if !(t >= 0.0 && t <= (n as f64) - 1.0) {
+        let last = n as f64 - 1.0;
+        if !(t >= -SNAP && t <= last + SNAP) {
             return None;
         }
+        let t = t.clamp(0.0, last);
         let lower = (t as usize).min(n.saturating_sub(2));
+        let cell = (lower, snapped(t - lower as f64));
         let count = n.min(4);
         let first = lower.saturating_sub(1).min(n - count);
-        let s = t - first as f64;
-        let mut weights = [0.0; 4];
-        for (k, weight) in weights.iter_mut().enumerate().take(count) {
-            *weight = (0..count)
-                .filter(|&m| m != k)
-                .map(|m| (s - m as f64) / (k as f64 - m as f64))
-                .product();
-        }
+        let s = (lower - first) as f64 + cell.1;
         Some(Span {
             first,
             count,
-            weights,
-            cell: (lower, t - lower as f64),
+            weights: lagrange(s, count),
+            cell,
         })
     }
 
@@ -77,6 +67,35 @@ impl Span {
         [(lower, 1.0 - t), (lower + 1, t)]
             .into_iter()
             .filter(|(_, w)| *w != 0.0)
+    }
+}
+
+/// A point that rounding put this part of a cell beside a node or the edge belongs on it.
+const SNAP: f64 = 1e-9;
+
+fn snapped(fraction: f64) -> f64 {
+    if fraction < SNAP {
+        0.0
+    } else if fraction > 1.0 - SNAP {
+        1.0
+    } else {
+        fraction
+    }
+}
+
+/// Weights of the Lagrange polynomial through `count` nodes at 0, 1, ... for the position `s`.
+fn lagrange(s: f64, count: usize) -> [f64; 4] {
+    let (a, b, c) = (s - 1.0, s - 2.0, s - 3.0);
+    match count {
+        4 => [
+            -a * b * c / 6.0,
+            s * b * c / 2.0,
+            -s * a * c / 2.0,
+            s * a * b / 6.0,
+        ],
+        3 => [a * b / 2.0, -s * b, s * a / 2.0, 0.0],
+        2 => [-a, s, 0.0, 0.0],
+        _ => [1.0, 0.0, 0.0, 0.0],
     }
 }
 
@@ -100,12 +119,12 @@ impl Place {
     /// Value there of an array on that grid; NaN beside masked cells.
     pub(crate) fn read(&self, values: &Array2<f64>) -> f64 {
         let mut sum = 0.0;
-        for b in 0..self.y.count {
+        for (b, wy) in self.y.weights.iter().take(self.y.count).enumerate() {
             let mut line = 0.0;
-            for a in 0..self.x.count {
-                line += self.x.weights[a] * values[(self.y.first + b, self.x.first + a)];
+            for (a, wx) in self.x.weights.iter().take(self.x.count).enumerate() {
+                line += wx * values[(self.y.first + b, self.x.first + a)];
             }
-            sum += self.y.weights[b] * line;
+            sum += wy * line;
         }
         if sum.is_nan() {
             self.read_bilinear(values)
@@ -123,6 +142,25 @@ impl Place {
         }
         sum
     }
+}
+
+/// Values at every crossing of the columns `x` and the rows `y`, shape (y, x); NaN outside the
+/// grid and beside masked cells.
+pub(crate) fn on_lattice(values: &Array2<f64>, grid: &Grid, x: &[f64], y: &[f64]) -> Array2<f64> {
+    let columns: Vec<_> = x
+        .iter()
+        .map(|&x| Span::around(grid.cell(x, 0.0).0, grid.nx))
+        .collect();
+    let mut lattice = Array2::from_elem((y.len(), x.len()), f64::NAN);
+    for (&y, mut row) in y.iter().zip(lattice.outer_iter_mut()) {
+        let Some(y) = Span::around(grid.cell(0.0, y).1, grid.ny) else {
+            continue;
+        };
+        for (x, value) in columns.iter().zip(row.iter_mut()) {
+            *value = x.map_or(f64::NAN, |x| Place { x, y }.read(values));
+        }
+    }
+    lattice
 }
 
 fn place(grid: &Grid, x: f64, y: f64) -> Result<Place, FieldError> {

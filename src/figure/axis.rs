@@ -89,25 +89,32 @@ impl Axis {
         log: bool,
         room: f64,
     ) -> Result<Self, FigureError> {
-        let size = span.lo.abs().max(span.hi.abs());
-        if asked.is_none() && size > LARGEST {
-            return Err(FigureError::OffScale {
-                axis: name,
-                value: size,
-            });
-        }
         if let Some((lo, hi)) = asked {
-            let tight = hi - lo <= 1e-9 * lo.abs().max(hi.abs());
-            let far = lo.abs().max(hi.abs()) > LARGEST;
-            if !(lo < hi) || tight || far || (log && lo <= 0.0) {
+            let size = lo.abs().max(hi.abs());
+            let carried = (1.0 / LARGEST..=LARGEST).contains(&size) && hi - lo > 1e-9 * size;
+            let decades = !log || lo >= 1.0 / LARGEST;
+            if !(lo < hi && carried && decades) {
                 let what = format!("{name}_range");
                 return Err(FigureError::Range { what, lo, hi });
             }
             return Ok(Self { lo, hi, log });
         }
+        let size = span.lo.abs().max(span.hi.abs());
+        if size > LARGEST {
+            return Err(FigureError::OffScale {
+                axis: name,
+                value: size,
+            });
+        }
         if log {
             if span.is_nothing() || span.lo <= 0.0 {
                 return Err(FigureError::NothingAboveZero(name));
+            }
+            if span.lo < 1.0 / LARGEST {
+                return Err(FigureError::OffScale {
+                    axis: name,
+                    value: span.lo,
+                });
             }
             let decades = (span.hi / span.lo).log10();
             let factor = if decades < 0.1 {

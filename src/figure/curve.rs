@@ -144,10 +144,8 @@ impl Curve {
                 // A single point between gaps would vanish as a line.
                 scene.fill(Path::circle(alone[0], stroke.width), colour);
             }
-            scene.stroke(
-                Path::polyline(run.iter().map(|p| p[0]), false),
-                stroke.clone(),
-            );
+            let line: Vec<Point> = run.iter().map(|p| p[0]).collect();
+            scene.stroke(within(&line, plot.rect.grown(5.0)), stroke.clone());
         }
     }
 
@@ -181,6 +179,46 @@ impl From<&Trace> for Curve {
             .units(trace.length, trace.unit)
             .x_name("distance")
     }
+}
+
+/// The parts of the line through `points` that pass through `rect`, so that a close look at a long
+/// curve keeps its slopes and does not dash what nobody sees.
+///
+/// Each piece is cut by the method of Liang & Barsky 1984 (from memory).
+fn within(points: &[Point], rect: Rect) -> Path {
+    let mut path = Path::new();
+    let mut pen: Option<Point> = None;
+    for pair in points.windows(2) {
+        let (a, b) = (pair[0], pair[1]);
+        let d = [b[0] - a[0], b[1] - a[1]];
+        let (mut t0, mut t1) = (0.0f64, 1.0f64);
+        let sides = [(0, rect.x, rect.right()), (1, rect.y, rect.bottom())];
+        for (k, low, high) in sides {
+            if d[k] == 0.0 {
+                if !(low..=high).contains(&a[k]) {
+                    t1 = -1.0;
+                }
+                continue;
+            }
+            let (p, q) = ((low - a[k]) / d[k], (high - a[k]) / d[k]);
+            t0 = t0.max(p.min(q));
+            t1 = t1.min(p.max(q));
+        }
+        if t0 > t1 {
+            continue;
+        }
+        let at = |t: f64| [a[0] + t * d[0], a[1] + t * d[1]];
+        let (from, to) = (
+            if t0 == 0.0 { a } else { at(t0) },
+            if t1 == 1.0 { b } else { at(t1) },
+        );
+        if pen != Some(from) {
+            path.move_to(from);
+        }
+        path.line_to(to);
+        pen = Some(to);
+    }
+    path
 }
 
 /// Colour and line of the `index`-th curve; after six they repeat.

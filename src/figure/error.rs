@@ -41,14 +41,18 @@ pub enum FigureError {
         found: usize,
     },
     /// An axis or shading range that is no range.
-    #[error("{what} {lo} to {hi} is no range: give two finite numbers, the smaller first")]
+    #[error(
+        "{what} {lo} to {hi} is no range: give two numbers, the smaller first, both above zero on an axis of decades, none beyond 1e150"
+    )]
     #[allow(missing_docs)]
     Range { what: String, lo: f64, hi: f64 },
     /// A logarithmic axis with nothing above zero on it.
     #[error("the {0} axis is logarithmic, and no value along it is above zero")]
     NothingAboveZero(&'static str),
     /// Values beyond what an axis can carry.
-    #[error("the {axis} axis would reach {value:e}; numbers beyond 1e150 cannot be drawn")]
+    #[error(
+        "the {axis} axis would reach {value:e}; numbers beyond 1e150, or within 1e-150 of zero on an axis of decades, cannot be drawn"
+    )]
     #[allow(missing_docs)]
     OffScale { axis: &'static str, value: f64 },
     /// An option that makes no sense.

@@ -10,7 +10,7 @@ use super::layer::Layer;
 use super::outlines::OutlineSet;
 use super::scene::Scene;
 use super::shade::ShadeOptions;
-use super::{layout, panels, raster, svg};
+use super::{panels, raster, sheet, svg};
 use crate::field::{ScalarField, Trace, VectorField};
 use crate::store::write_atomically;
 
@@ -175,7 +175,7 @@ impl Figure {
 
     pub(crate) fn scene(&self, dots_per_mm: f64) -> Result<Scene, FigureError> {
         if self.panels.is_empty() {
-            layout::scene(self, dots_per_mm)
+            sheet::scene(self, dots_per_mm)
         } else {
             panels::scene(self, dots_per_mm)
         }

@@ -168,9 +168,7 @@ impl Key {
     ) {
         let mut y = y;
         if let Some((shading, _)) = &self.bar {
-            let length = (height - self.height_below_bar())
-                .max(LEAST_BAR_MM)
-                .min(90.0);
+            let length = (height - self.height_below_bar()).clamp(LEAST_BAR_MM, 90.0);
             let rect = Rect {
                 x,
                 y,

@@ -158,12 +158,14 @@ mod tests {
             let factor = 10f64.powi(ticks.exponent);
             for (value, text) in &ticks.major {
                 prop_assert!((lo..=hi).contains(value));
-                prop_assert!((read(text) * factor - value).abs() <= 1e-9 * (hi - lo), "{text} for {value}");
+                prop_assert!((read(text) * factor - value).abs() <= 1e-9 * (hi - lo) + 1e-15 * value.abs(), "{text} for {value}");
                 prop_assert!(!text.contains('-'));
             }
             let step = ticks.major[1].0 - ticks.major[0].0;
             for pair in ticks.major.windows(2) {
-                prop_assert!((pair[1].0 - pair[0].0 - step).abs() < 1e-9 * (hi - lo));
+                // Neighbours are doubles nearest to decimal numbers, so their distance is rounded.
+                let rounding = 1e-9 * (hi - lo) + 1e-15 * middle.abs();
+                prop_assert!((pair[1].0 - pair[0].0 - step).abs() < rounding);
                 prop_assert_ne!(&pair[0].1, &pair[1].1);
             }
             let leading = step / 10f64.powi((step * (1.0 + 1e-6)).log10().floor() as i32);

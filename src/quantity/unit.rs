@@ -98,7 +98,7 @@ impl Unit {
     pub fn times(self, other: Unit) -> Unit {
         let mut powers = self.powers;
         for (p, q) in powers.iter_mut().zip(other.powers) {
-            *p += q;
+            *p = p.saturating_add(q);
         }
         Unit { powers }
     }
@@ -111,7 +111,7 @@ impl Unit {
     /// The unit to an integer power.
     pub fn power(self, n: i8) -> Unit {
         Unit {
-            powers: self.powers.map(|p| p * n),
+            powers: self.powers.map(|p| p.saturating_mul(n)),
         }
     }
 

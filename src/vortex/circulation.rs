@@ -51,7 +51,7 @@ impl CirculationCurve {
     /// `radius`, the eddy's own.
     pub(super) fn around(field: &VectorField, peak: Peak, radius: f64) -> Self {
         let cell = field.grid.dx.min(field.grid.dy);
-        let step = (cell / 4.0).max(radius / 24.0);
+        let step = (cell / 4.0).max(radius / 20.0);
         let mut curve = Self {
             radius: Vec::new(),
             circulation: Vec::new(),
@@ -60,7 +60,7 @@ impl CirculationCurve {
         };
         for k in 1..=(REACH * radius / step) as usize {
             let r = k as f64 * step;
-            let points = (8.0 * r / cell).clamp(64.0, 360.0) as usize;
+            let points = (8.0 * r / cell).clamp(48.0, 180.0) as usize;
             let Some(circulation) = round(field, peak, r, points) else {
                 break;
             };

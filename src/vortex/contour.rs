@@ -1,17 +1,21 @@
 //! The line round a centre on which a field has a given value, to less than a cell.
 //!
-//! The field is sampled on a lattice [`FINE`] times finer than the grid (see `field::sample`),
-//! the lattice nodes above the level that hang together with the centre are collected, and the
+//! The field is sampled on a lattice finer than the grid (see `field::sample`), the lattice nodes above the level that hang together with the centre are collected, and the
 //! line is drawn round them by interpolating linearly across each lattice edge it crosses
 //! (marching squares, walked from crossing to crossing).
 
+use std::cmp::Ordering;
+
 use ndarray::Array2;
 
-use crate::field::{Grid, Place};
+use crate::field::{Grid, on_lattice};
 
-/// Lattice steps in a cell. Linear interpolation on the bare grid would put the 25 % line of a
-/// core of three spacings 1 % too far out; its error falls with the square of this number.
-const FINE: usize = 4;
+/// Lattice steps the radius of the region should have. Linear interpolation puts the 25 % line of
+/// a Gaussian core 0.15 / n² of its radius too far out, n being the steps in that radius.
+const STEPS: f64 = 16.0;
+
+/// Most lattice steps in a cell; more would only resolve the interpolation.
+const MOST: usize = 4;
 
 /// A closed line and what is inside.
 #[derive(Clone, Debug)]
@@ -45,18 +49,22 @@ impl Contour {
 }
 
 /// The contour of `values` at `level` that encloses the connected region above it around
-/// (x, y); `None` when the values there are not above the level.
+/// (x, y); `None` when the values there are not above the level. `cells` is about how many cells
+/// its radius has: it decides how fine the lattice is and where the search begins, not where it
+/// ends.
 pub(super) fn around(
     values: &Array2<f64>,
     grid: &Grid,
     (x, y): (f64, f64),
     level: f64,
+    cells: f64,
 ) -> Option<Contour> {
-    let mut half_width = 6;
+    let fine = ((STEPS / cells).ceil() as usize).clamp(1, MOST);
+    let mut half_width = (1.5 * cells) as usize + 3;
     loop {
-        let patch = Patch::around(values, grid, (x, y), half_width);
+        let patch = Patch::around(values, grid, (x, y), half_width, fine);
         let region = patch.region(level, patch.nearest(x, y))?;
-        if !(region.reaches_side && patch.can_grow(grid)) {
+        if !region.leaves_patch {
             return Some(patch.walk_round(&region, level));
         }
         half_width *= 2;
@@ -68,18 +76,28 @@ struct Patch {
     grid: Grid,
     /// The lower left node of the grid in the patch: column, row.
     corner: (usize, usize),
+    /// Lattice steps in a cell.
+    fine: usize,
     lattice: Array2<f64>,
 }
 
 /// Lattice nodes above the level that hang together.
 struct Region {
     members: Array2<bool>,
-    reaches_side: bool,
+    /// Reaches a side of the patch that is not the edge of the grid.
+    leaves_patch: bool,
+    reaches_edge: bool,
     meets_gap: bool,
 }
 
 impl Patch {
-    fn around(values: &Array2<f64>, grid: &Grid, (x, y): (f64, f64), half_width: usize) -> Patch {
+    fn around(
+        values: &Array2<f64>,
+        grid: &Grid,
+        (x, y): (f64, f64),
+        half_width: usize,
+        fine: usize,
+    ) -> Patch {
         let (i, j) = grid.cell(x, y);
         let bounds = |t: f64, n: usize| {
             let node = (t.round().max(0.0) as usize).min(n - 1);
@@ -91,17 +109,17 @@ impl Patch {
         let mut patch = Patch {
             grid: *grid,
             corner: (i0, j0),
-            lattice: Array2::zeros((high * FINE + 1, wide * FINE + 1)),
+            fine,
+            lattice: Array2::zeros((0, 0)),
         };
-        patch.lattice = Array2::from_shape_fn(patch.lattice.dim(), |(b, a)| {
-            let [x, y] = patch.point(b, a);
-            Place::on(grid, x, y).map_or(f64::NAN, |place| place.read(values))
-        });
+        let columns: Vec<f64> = (0..=wide * fine).map(|a| patch.point(0, a)[0]).collect();
+        let rows: Vec<f64> = (0..=high * fine).map(|b| patch.point(b, 0)[1]).collect();
+        patch.lattice = on_lattice(values, grid, &columns, &rows);
         patch
     }
 
     fn point(&self, b: usize, a: usize) -> [f64; 2] {
-        let at = |first: usize, k: usize| first as f64 + k as f64 / FINE as f64;
+        let at = |first: usize, k: usize| first as f64 + k as f64 / self.fine as f64;
         let (i, j) = (at(self.corner.0, a), at(self.corner.1, b));
         [
             self.grid.x0 + i * self.grid.dx,
@@ -113,33 +131,41 @@ impl Patch {
         let (i, j) = self.grid.cell(x, y);
         let (high, wide) = self.lattice.dim();
         let index = |t: f64, first: usize, count: usize| {
-            let k = ((t - first as f64) * FINE as f64).round();
+            let k = ((t - first as f64) * self.fine as f64).round();
             (k.max(0.0) as usize).min(count - 1)
         };
         (index(j, self.corner.1, high), index(i, self.corner.0, wide))
     }
 
-    /// True while some side of the patch is inside the grid.
-    fn can_grow(&self, grid: &Grid) -> bool {
+    /// Which sides of the patch (left, lower, right, upper) are edges of the grid.
+    fn edges(&self) -> [bool; 4] {
         let (high, wide) = self.lattice.dim();
-        wide < (grid.nx - 1) * FINE + 1 || high < (grid.ny - 1) * FINE + 1
+        let (i, j) = self.corner;
+        let right = i + (wide - 1) / self.fine + 1 == self.grid.nx;
+        let upper = j + (high - 1) / self.fine + 1 == self.grid.ny;
+        [i == 0, j == 0, right, upper]
     }
 
     fn region(&self, level: f64, start: (usize, usize)) -> Option<Region> {
         let (high, wide) = self.lattice.dim();
         let mut region = Region {
             members: Array2::from_elem((high, wide), false),
-            reaches_side: false,
+            leaves_patch: false,
+            reaches_edge: false,
             meets_gap: false,
         };
-        if !(self.lattice[start] > level) {
+        if self.lattice[start].partial_cmp(&level) != Some(Ordering::Greater) {
             return None;
         }
         region.members[start] = true;
         let mut open = vec![start];
         while let Some(node) = open.pop() {
             let (b, a) = node;
-            region.reaches_side |= a == 0 || b == 0 || a + 1 == wide || b + 1 == high;
+            let sides = [a == 0, b == 0, a + 1 == wide, b + 1 == high];
+            for (is_here, is_edge) in sides.into_iter().zip(self.edges()) {
+                region.reaches_edge |= is_here && is_edge;
+                region.leaves_patch |= is_here && !is_edge;
+            }
             for n in super::find::neighbours(node, (high, wide)) {
                 let value = self.lattice[n];
                 region.meets_gap |= value.is_nan();
@@ -186,13 +212,13 @@ impl Patch {
             }
         }
         let inside = members
-            .filter(|((b, a), _)| b % FINE == 0 && a % FINE == 0)
-            .map(|((b, a), _)| (self.corner.1 + b / FINE, self.corner.0 + a / FINE))
+            .filter(|((b, a), _)| b % self.fine == 0 && a % self.fine == 0)
+            .map(|((b, a), _)| (self.corner.1 + b / self.fine, self.corner.0 + a / self.fine))
             .collect();
         Contour {
             points,
             inside,
-            cut_by_edge: region.reaches_side,
+            cut_by_edge: region.reaches_edge,
             cut_by_mask: region.meets_gap,
         }
     }
@@ -209,7 +235,7 @@ impl Patch {
             .and_then(|n| self.lattice.get(n));
         let here = self.lattice[node];
         let t = match beyond {
-            Some(there) if there.is_finite() => (here - level) / (here - there) / FINE as f64,
+            Some(there) if there.is_finite() => (here - level) / (here - there) / self.fine as f64,
             _ => 0.0,
         };
         [
@@ -248,7 +274,7 @@ mod tests {
         ) {
             let grid = grid();
             let hill = grid.map(|px, py| 2.0 - ((px - x) / a).powi(2) - ((py - y) / b).powi(2));
-            let contour = around(&hill, &grid, (x, y), 1.0).unwrap();
+            let contour = around(&hill, &grid, (x, y), 1.0, a.min(b)).unwrap();
             // A chord of a quarter cell cuts less than 1/(96 r²) off the area, and linear
             // interpolation of a quadratic on it moves the line by at most as much again.
             prop_assert!((contour.area() / (PI * a * b) - 1.0).abs() < 3e-3);
@@ -264,24 +290,24 @@ mod tests {
         let grid = grid();
         let hill = |x: f64, cx: f64, y: f64| 2.0 - ((x - cx).powi(2) + y * y) / 16.0;
         let two = grid.map(|x, y| hill(x, -8.0, y).max(hill(x, 8.0, y)));
-        let contour = around(&two, &grid, (-8.0, 0.0), 1.0).unwrap();
+        let contour = around(&two, &grid, (-8.0, 0.0), 1.0, 4.0).unwrap();
         assert!((contour.area() / (16.0 * PI) - 1.0).abs() < 3e-3);
         assert!(contour.encloses(-8.0, 0.0) && !contour.encloses(8.0, 0.0));
-        assert!(around(&two, &grid, (0.0, 12.0), 1.0).is_none());
+        assert!(around(&two, &grid, (0.0, 12.0), 1.0, 4.0).is_none());
     }
 
     #[test]
     fn edges_and_gaps_close_the_line_and_are_said() {
         let grid = grid();
         let mut hill = grid.map(|x, y| 2.0 - ((x + 20.0).powi(2) + y * y) / 36.0);
-        let half = around(&hill, &grid, (-19.0, 0.0), 1.0).unwrap();
+        let half = around(&hill, &grid, (-19.0, 0.0), 1.0, 6.0).unwrap();
         assert!(half.cut_by_edge && !half.cut_by_mask);
         assert!((half.area() / (18.0 * PI) - 1.0).abs() < 3e-3);
         hill = grid.map(|x, y| 2.0 - (x * x + y * y) / 36.0);
         for j in 0..grid.ny {
             hill[(j, 22)] = f64::NAN;
         }
-        let cut = around(&hill, &grid, (0.0, 0.0), 1.0).unwrap();
+        let cut = around(&hill, &grid, (0.0, 0.0), 1.0, 6.0).unwrap();
         assert!(cut.cut_by_mask && !cut.cut_by_edge);
         // A circle of radius 6 cut one node before x = 2.
         let d = 1.0f64;
@@ -296,7 +322,7 @@ mod tests {
             let r = x.hypot(y);
             if r < 3.0 { 0.0 } else { 2.0 - r / 10.0 }
         });
-        let contour = around(&ring, &grid, (5.0, 0.0), 1.0).unwrap();
+        let contour = around(&ring, &grid, (5.0, 0.0), 1.0, 1.0).unwrap();
         assert!((contour.area() / (100.0 * PI) - 1.0).abs() < 3e-3);
     }
 }

@@ -137,7 +137,7 @@ impl Seen {
             (Sense::Clockwise, &rotations.backward)
         };
         let peak = peak(rotation, &field.grid, &core.nodes)?;
-        let fraction = fraction(field, rotation, peak, options.fraction)?;
+        let fraction = fraction(field, rotation, peak, core.nodes.len(), options.fraction)?;
         Some(Seen {
             sense,
             peak,

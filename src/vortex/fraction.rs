@@ -25,16 +25,18 @@ pub(super) struct Fraction {
     pub circulation: f64,
 }
 
-/// Measures the eddy with the given peak; `rotation` is the vorticity times the eddy's sign.
-/// `None` where the contour holds no area.
+/// Measures the eddy with the given peak whose core of swirling strength has `nodes` nodes;
+/// `rotation` is the vorticity times the eddy's sign. `None` where the contour holds no area.
 pub(super) fn fraction(
     field: &VectorField,
     rotation: &Array2<f64>,
     peak: Peak,
+    nodes: usize,
     fraction: f64,
 ) -> Option<Fraction> {
     let level = fraction * peak.height;
-    let contour = around(rotation, &field.grid, (peak.x, peak.y), level)?;
+    let cells = (nodes as f64 / PI).sqrt();
+    let contour = around(rotation, &field.grid, (peak.x, peak.y), level, cells)?;
     let area = contour.area();
     (area > 0.0).then(|| Fraction {
         diameter: 2.0 * (area / PI).sqrt(),

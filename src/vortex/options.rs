@@ -39,18 +39,21 @@ impl EddyOptions {
 
     /// Refuses what makes no sense, naming the option.
     pub(super) fn check(&self) -> Result<(), FieldError> {
-        let part = |name: &str, value: f64, most: f64| {
-            if value > 0.0 && (value < 1.0 || value == most) {
-                Ok(())
-            } else {
-                Err(FieldError::Option(format!(
-                    "{name} must lie between 0 and 1; it is {value}"
-                )))
-            }
+        let refuse = |name: &str, value: f64| {
+            Err(FieldError::Option(format!(
+                "{name} must lie between 0 and 1; it is {value}"
+            )))
         };
-        part("fraction", self.fraction, 0.0)?;
-        part("threshold", self.threshold, 0.0)?;
-        part("saddle", self.saddle, 1.0)?;
+        let is_part = |value: f64| value > 0.0 && value < 1.0;
+        if !is_part(self.fraction) {
+            return refuse("fraction", self.fraction);
+        }
+        if !is_part(self.threshold) {
+            return refuse("threshold", self.threshold);
+        }
+        if !is_part(self.saddle) && self.saddle != 1.0 {
+            return refuse("saddle", self.saddle);
+        }
         if self.least_nodes == 0 {
             let what = "least_nodes must be at least 1; it is 0".to_owned();
             return Err(FieldError::Option(what));
