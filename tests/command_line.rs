@@ -1,5 +1,7 @@
 //! The program as it is started: what it prints, writes and exits with.
 
+#![allow(clippy::unwrap_used)] // Tests say what went wrong by failing.
+
 use std::io::Write;
 use std::path::Path;
 use std::process::{Command, Output, Stdio};

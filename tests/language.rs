@@ -5,6 +5,8 @@
 //! `// error: TEXT` stands directly above the line that fails, `// hint: TEXT` below it where the
 //! hint is part of the claim.
 
+#![allow(clippy::unwrap_used)] // Tests say what went wrong by failing.
+
 use std::cell::RefCell;
 use std::path::Path;
 use std::rc::Rc;

@@ -328,6 +328,7 @@ pub(super) fn present(value: f64, unit: Unit) -> Result<Measured, Fault> {
     Ok(Measured::without_uncertainty(value, unit))
 }
 
+#[allow(clippy::type_complexity)] // The table is read once, just below.
 fn of_gradients(room: &mut Room) {
     type Read = fn(&Gradient) -> ScalarField;
     let rules: [(&str, &str, &str, &str, &str, (&str, &str), Read); 8] = [
@@ -435,6 +436,7 @@ fn of_gradients(room: &mut Room) {
         .does(|gradient: &Gradient| gradient.scheme.text());
 }
 
+#[allow(clippy::type_complexity)] // The table is read once, just below.
 fn of_scalars(room: &mut Room) {
     room.property::<ScalarField>("name")
         .about("What the values are, in words.")
