@@ -14,6 +14,7 @@ mod arrows;
 mod axis;
 mod colour;
 mod curve;
+mod eddies;
 mod error;
 #[allow(clippy::module_inception)]
 mod figure;
@@ -37,6 +38,7 @@ mod transect;
 pub use arrows::ArrowOptions;
 pub use colour::Colour;
 pub use curve::{Bars, Curve};
+pub use eddies::eddy_transect;
 pub use error::{FigureError, UnitName};
 pub use figure::{DOTS_PER_INCH, Figure};
 pub use outlines::{Outline, OutlineSet};

@@ -48,11 +48,20 @@ impl Call {
         Ok(self.session.sandbox().readable(Path::new(path))?)
     }
 
-    /// The path to write `path` to, with its folder made, and noted as written.
+    /// Lets `write` write the file `path`, with its folder made; once it has, the file counts as
+    /// written.
     ///
     /// # Errors
-    /// A path outside the output folder, or a folder that cannot be made.
-    pub fn writable(&self, path: &str) -> Result<PathBuf, Fault> {
-        Ok(self.session.sandbox().writable(Path::new(path))?)
+    /// A path outside the output folder, a folder that cannot be made, what `write` says.
+    pub fn write<E: Into<Fault>>(
+        &self,
+        path: &str,
+        write: impl FnOnce(&Path) -> Result<(), E>,
+    ) -> Result<(), Fault> {
+        let sandbox = self.session.sandbox();
+        let full = sandbox.writable(Path::new(path))?;
+        write(&full).map_err(Into::into)?;
+        sandbox.note(full);
+        Ok(())
     }
 }

@@ -173,10 +173,7 @@ pub(super) fn show(value: &Dynamic) -> String {
         return show_list(&list);
     }
     if let Ok(map) = value.as_map_ref() {
-        let entries = map
-            .iter()
-            .map(|(key, value)| format!("{key}: {}", show(value)));
-        return format!("#{{{}}}", entries.collect::<Vec<_>>().join(", "));
+        return show_map(&map);
     }
     if value.is_unit() {
         return "()".to_owned();
@@ -187,8 +184,22 @@ pub(super) fn show(value: &Dynamic) -> String {
     value.to_string()
 }
 
+/// A map as it would be written.
+pub(super) fn show_map(map: &Map) -> String {
+    let entries = map.iter().map(|(key, value)| {
+        let is_word = key.chars().all(|c| c.is_alphanumeric() || c == '_');
+        let key = if is_word {
+            key.to_string()
+        } else {
+            format!("\"{key}\"")
+        };
+        format!("{key}: {}", show(value))
+    });
+    format!("#{{{}}}", entries.collect::<Vec<_>>().join(", "))
+}
+
 /// A list on one line while it is short and of plain values, one item a line otherwise.
-fn show_list(list: &Array) -> String {
+pub(super) fn show_list(list: &Array) -> String {
     let items: Vec<String> = list.iter().map(show).collect();
     let one_line = format!("[{}]", items.join(", "));
     let plain = |value: &Dynamic| KNOWN.with_borrow(|known| !known.contains_key(&value.type_id()));

@@ -11,6 +11,7 @@ use rhai::packages::{
 use rhai::{AST, Dynamic, Engine, EvalAltResult, FnPtr, Module, Scope};
 
 use super::arithmetic;
+use super::kind::{show_list, show_map};
 use super::modules::Modules;
 use super::number::number_text;
 use super::record::Form;
@@ -174,15 +175,17 @@ pub(super) fn bare_engine() -> Engine {
     engine.set_max_map_size(LARGEST.2);
     engine.set_optimization_level(rhai::OptimizationLevel::None);
     arithmetic::register(&mut engine);
-    print_numbers(&mut engine);
+    print_plain_values(&mut engine);
     name_plain_kinds(&mut engine);
     engine.set_fail_on_invalid_map_property(true);
     engine
 }
 
-fn print_numbers(engine: &mut Engine) {
+fn print_plain_values(engine: &mut Engine) {
     for name in ["print", "to_string", "to_debug", "debug"] {
         engine.register_fn(name, |x: f64| number_text(x));
+        engine.register_fn(name, |list: &mut rhai::Array| show_list(list));
+        engine.register_fn(name, |map: &mut rhai::Map| show_map(map));
     }
     engine.register_fn("+", |text: &str, x: f64| {
         format!("{text}{}", number_text(x))

@@ -8,6 +8,7 @@ use std::rc::Rc;
 use rhai::{Engine, EvalAltResult, Module, ModuleResolver, Position, Scope};
 
 use super::fault::Fault;
+use super::sandbox::SandboxError;
 use super::session::Session;
 
 type SharedModule = Rc<Module>;
@@ -46,7 +47,10 @@ impl Modules {
             .filter(|s| self.session.sources.text(s).is_some())
             .and_then(|s| Path::new(s).parent())
             .map_or_else(|| start.to_owned(), |folder| start.join(folder));
-        let file = self.session.sandbox().readable(&folder.join(name))?;
+        let sandbox = self.session.sandbox();
+        let file = sandbox
+            .readable(&folder.join(&name))
+            .map_err(|_| SandboxError::Read(name))?;
         if file.is_file() {
             Ok(file)
         } else {

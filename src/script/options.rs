@@ -113,8 +113,11 @@ impl OptionKey {
     /// The default as a script would write it: `[64, 32, 32]`, not `Some(vec![64, 32, 32])`.
     pub fn default_text(&self) -> String {
         let mut text = self.default.trim();
-        if text == "None" {
-            return "none".to_owned();
+        match text {
+            "None" => return "none".to_owned(),
+            "String::new()" => return "\"\"".to_owned(),
+            "Vec::new()" => return "[]".to_owned(),
+            _ => {}
         }
         for (open, close) in [("Some(", ")"), ("vec!", "")] {
             if let Some(inner) = text.strip_prefix(open).and_then(|t| t.strip_suffix(close)) {

@@ -20,30 +20,14 @@ pub struct Sandbox {
 pub enum SandboxError {
     /// Reading outside the read folders.
     #[error(
-        "a script may not read {path}: it reads only below {folders} (give `--read FOLDER` to allow another)"
+        "a script may not read {0}: it reads only below the folder it was started in and those given with `--read FOLDER`"
     )]
-    Read {
-        /// The path as the script wrote it.
-        path: String,
-        /// The folders it may read from.
-        folders: String,
-    },
+    Read(String),
     /// Writing outside the output folder.
     #[error(
-        "a script may not write {path}: it writes only below its output folder {out} (choose another with `--out FOLDER`)"
+        "a script may not write {0}: it writes only below its output folder (choose another with `--out FOLDER`)"
     )]
-    Write {
-        /// The path as the script wrote it.
-        path: String,
-        /// The output folder.
-        out: String,
-    },
-    /// A file that is not there.
-    #[error("there is no file {path}")]
-    Missing {
-        /// The path looked for.
-        path: String,
-    },
+    Write(String),
     /// A folder that cannot be made or looked into.
     #[error("cannot use the folder {path}: {reason}")]
     Folder {
@@ -110,22 +94,16 @@ impl Sandbox {
         if allowed.clone().any(|folder| full.starts_with(folder)) {
             return Ok(full);
         }
-        Err(SandboxError::Read {
-            path: path.display().to_string(),
-            folders: list(&self.read),
-        })
+        Err(SandboxError::Read(path.display().to_string()))
     }
 
     /// Where to write `path`, taken from the output folder when relative; makes the folders it
-    /// needs and notes the file as written.
+    /// needs.
     ///
     /// # Errors
     /// A path outside the output folder; a folder that cannot be made.
     pub fn writable(&self, path: &Path) -> Result<PathBuf, SandboxError> {
-        let refused = || SandboxError::Write {
-            path: path.display().to_string(),
-            out: self.out.display().to_string(),
-        };
+        let refused = || SandboxError::Write(path.display().to_string());
         let full = settled(&self.out.join(path));
         if !full.starts_with(&self.out) || full == self.out {
             return Err(refused());
@@ -135,11 +113,15 @@ impl Sandbox {
             path: folder.display().to_string(),
             reason,
         })?;
-        let mut written = self.written.borrow_mut();
-        if !written.contains(&full) {
-            written.push(full.clone());
-        }
         Ok(full)
+    }
+
+    /// Notes a file as written.
+    pub(super) fn note(&self, file: PathBuf) {
+        let mut written = self.written.borrow_mut();
+        if !written.contains(&file) {
+            written.push(file);
+        }
     }
 }
 
@@ -162,11 +144,6 @@ fn settled(path: &Path) -> PathBuf {
         }
     }
     settled
-}
-
-fn list(folders: &[PathBuf]) -> String {
-    let names: Vec<_> = folders.iter().map(|f| f.display().to_string()).collect();
-    names.join(", ")
 }
 
 #[cfg(test)]
@@ -215,6 +192,8 @@ mod tests {
         let path = sandbox.writable(Path::new("tables/eddies.csv")).unwrap();
         assert_eq!(path, sandbox.start().join("out/tables/eddies.csv"));
         assert!(path.parent().unwrap().is_dir());
+        sandbox.note(path.clone());
+        sandbox.note(path.clone());
         assert_eq!(sandbox.written(), [path]);
         for path in ["../a.csv", "/tmp/a.csv", ".", "", "tables/../../a.csv"] {
             assert!(sandbox.writable(Path::new(path)).is_err(), "{path}");

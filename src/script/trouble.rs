@@ -30,7 +30,7 @@ pub struct Trouble {
     /// What would be right.
     pub hint: Option<String>,
     /// Where it happened: the innermost place.
-    pub place: Option<Place>,
+    pub place: Option<Box<Place>>,
     /// The calls that led there, innermost first, as `name, called at file:line:column`.
     pub calls: Vec<String>,
     /// True when the script did not fail but was interrupted.
@@ -186,7 +186,7 @@ fn at(source: &str, position: Position) -> String {
 }
 
 /// The place of an error, narrowed to the option `key` where that stands close behind.
-fn place(source: &str, text: &str, position: Position, key: Option<&str>) -> Option<Place> {
+fn place(source: &str, text: &str, position: Position, key: Option<&str>) -> Option<Box<Place>> {
     let line = position.line()?;
     let column = position.position().unwrap_or(1);
     let before: usize = text
@@ -194,26 +194,26 @@ fn place(source: &str, text: &str, position: Position, key: Option<&str>) -> Opt
         .take(line - 1)
         .map(|line| line.chars().count() + 1)
         .sum();
-    let total = text.chars().count();
     // A script that ends too early fails behind its last character: show that character.
-    let start = (before + column - 1).min(total.saturating_sub(1));
+    let last = text.trim_end().chars().count().saturating_sub(1);
+    let start = (before + column - 1).min(last);
     let rest: String = text.chars().skip(start).collect();
     let span = key
         .and_then(|key| key_span(&rest, key))
         .unwrap_or_else(|| 0..token_length(&rest));
     let span = span.start + start..span.end + start;
-    let (line, column) = if span.start == start {
+    let (line, column) = if span.start == before + column - 1 {
         (line, column)
     } else {
         line_and_column(text, span.start)
     };
-    Some(Place {
+    Some(Box::new(Place {
         source: source.to_owned(),
         text: text.to_owned(),
         line,
         column,
         span,
-    })
+    }))
 }
 
 fn line_and_column(text: &str, offset: usize) -> (usize, usize) {
@@ -237,7 +237,8 @@ fn key_span(rest: &str, key: &str) -> Option<std::ops::Range<usize>> {
     let is_word = |c: Option<&char>| c.is_some_and(|c| c.is_alphanumeric() || *c == '_');
     (0..chars.len().checked_sub(wanted.len())? + 1).find_map(|i| {
         let end = i + wanted.len();
-        let alone = !(i > 0 && is_word(chars.get(i - 1))) && !is_word(chars.get(end));
+        let before = i.checked_sub(1).and_then(|i| chars.get(i));
+        let alone = !is_word(before) && !is_word(chars.get(end));
         let colon = chars
             .get(end..)?
             .iter()

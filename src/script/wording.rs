@@ -364,6 +364,10 @@ fn parsing(kind: &ParseErrorType) -> Wording {
         P::BadInput(LexError::ImproperSymbol(s, text)) => {
             Wording::new(format!("`{s}` has no meaning here")).hint(lower_first(text))
         }
+        P::MissingToken(token, why) if token == "," => {
+            Wording::new("`,` or the closing bracket is missing")
+                .hint(format!("`,` is needed {why}"))
+        }
         P::MissingToken(token, why) => {
             Wording::new(format!("`{token}` is missing")).hint(format!("it is needed {why}"))
         }

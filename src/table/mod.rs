@@ -8,10 +8,12 @@
 mod cell;
 mod column;
 mod csv;
+mod eddies;
 mod show;
 #[allow(clippy::module_inception)]
 mod table;
 
 pub use cell::Cell;
 pub use column::Column;
+pub use eddies::{eddies, eddies_of_each};
 pub use table::{Table, TableError};

@@ -228,8 +228,7 @@ fn files(room: &mut Room) {
         .errors("the file cannot be written")
         .example(with_a_flow!("flow.save(\"flow.csv\")"), "")
         .does(|flow: &VectorField, file: String, call: Call| {
-            save_vectors(flow, &call.writable(&file)?)?;
-            Ok::<_, Fault>(())
+            call.write(&file, |path| save_vectors(flow, path))
         });
     room.function("read_vectors")
         .about(
@@ -329,6 +328,7 @@ pub(super) fn present(value: f64, unit: Unit) -> Result<Measured, Fault> {
     Ok(Measured::without_uncertainty(value, unit))
 }
 
+#[allow(clippy::type_complexity)] // The table is read once, just below.
 fn of_gradients(room: &mut Room) {
     type Read = fn(&Gradient) -> ScalarField;
     let rules: [(&str, &str, &str, &str, &str, (&str, &str), Read); 8] = [
@@ -436,6 +436,7 @@ fn of_gradients(room: &mut Room) {
         .does(|gradient: &Gradient| gradient.scheme.text());
 }
 
+#[allow(clippy::type_complexity)] // The table is read once, just below.
 fn of_scalars(room: &mut Room) {
     room.property::<ScalarField>("name")
         .about("What the values are, in words.")

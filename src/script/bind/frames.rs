@@ -242,8 +242,7 @@ fn of_pairs(room: &mut Room) {
         .example(with_two_pairs!("p.save(\"a.tif\", \"b.tif\")"), "")
         .does(|pair: &Pair, first: String, second: String, call: Call| {
             let (a, b) = pair.load()?;
-            write_tiff(&call.writable(&first)?, &a)?;
-            write_tiff(&call.writable(&second)?, &b)?;
-            Ok::<_, Fault>(())
+            call.write(&first, |path| write_tiff(path, &a))?;
+            call.write(&second, |path| write_tiff(path, &b))
         });
 }

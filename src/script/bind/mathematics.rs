@@ -83,6 +83,7 @@ pub(super) fn records(room: &mut Room) {
     of_two(room);
 }
 
+#[allow(clippy::type_complexity)] // The table is read once, just below.
 fn rounding(room: &mut Room) {
     let rules: [(&str, &str, (&str, &str), fn(f64) -> f64); 3] = [
         (

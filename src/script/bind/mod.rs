@@ -6,6 +6,7 @@
 mod core;
 mod field;
 mod field_arithmetic;
+mod figure;
 mod frames;
 mod interrogate;
 mod lists;
@@ -13,6 +14,7 @@ mod mathematics;
 mod place;
 mod quantity;
 mod synth;
+mod table;
 mod vortex;
 
 use super::draft::Room;
@@ -20,11 +22,13 @@ use super::draft::Room;
 type Write = fn(&mut Room);
 
 /// Every room with the function that writes its records, in the order help lists them.
-pub(super) const ROOMS: [(&str, Write); 9] = [
+pub(super) const ROOMS: [(&str, Write); 11] = [
     ("recordings", frames::records),
     ("interrogation", interrogate::records),
     ("fields", field::records),
     ("eddies", vortex::records),
+    ("tables", table::records),
+    ("figures", figure::records),
     ("measured values", quantity::records),
     ("known flows", synth::records),
     ("numbers", mathematics::records),

@@ -203,6 +203,7 @@ fn root(m: &Measured) -> Result<Measured, Fault> {
 }
 
 /// `+` and `-`, between measured values and with plain numbers on either side.
+#[allow(clippy::type_complexity)] // The table is read once, just below.
 fn sums(room: &mut Room) {
     type Sum = fn(&Measured, &Measured) -> Result<Measured, UnitMismatch>;
     let rules: [(&str, &str, Sum, [(&str, &str); 2]); 2] = [
@@ -324,6 +325,7 @@ fn power(m: &Measured, exponent: f64) -> Result<Measured, Fault> {
 
 /// Comparison of the numbers, exactly, after conversion to one unit. The uncertainty plays no
 /// part: whether two values differ *significantly* is another question.
+#[allow(clippy::type_complexity)] // The table is read once, just below.
 fn comparisons(room: &mut Room) {
     type Holds = fn(Ordering) -> bool;
     let rules: [(&str, Holds, (&str, &str), (&str, &str)); 6] = [
