@@ -311,6 +311,10 @@ fn mismatch(wanted: &str, given: &str) -> Wording {
     let given = people_say(given.trim_start_matches("a "));
     match (wanted.as_str(), given.as_str()) {
         ("", given) => Wording::new(format!("{} does not fit here", with_article(given))),
+        ("number", "number") => {
+            Wording::new("a whole number is needed here, not one with decimals")
+                .hint("round(x) gives the nearest whole number")
+        }
         (wanted, "") => Wording::new(format!("{} is needed here", with_article(wanted))),
         (wanted, given) => Wording::new(format!(
             "{} is needed here, not {}",

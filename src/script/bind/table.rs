@@ -180,7 +180,7 @@ fn choosing(room: &mut Room) {
                 .collect::<Vec<_>>()
         });
     room.method::<Table>("column")
-        .about("The cells of a column as a list; () where one is missing.")
+        .about("The cells of a column as a list; () where one is missing. Where a column has no unit and only whole numbers, they can pick items of a list.")
         .words("values list cells pick")
         .input(
             "name",
@@ -194,7 +194,13 @@ fn choosing(room: &mut Room) {
             "10.3333333333333",
         )
         .does(|table: &Table, name: String| {
-            let cells = table.column(&name)?.cells.iter().map(cell);
+            let column = table.column(&name)?;
+            // Counts and numbers of things pick items of a list, which only whole numbers do.
+            let whole = column.unit.is_one() && column.numbers().all(|n| n.fract() == 0.0 && n.abs() < 1e15);
+            let cells = column.cells.iter().map(|c| match c {
+                Cell::Number(n) if whole => Dynamic::from(*n as rhai::INT),
+                c => cell(c),
+            });
             Ok::<Vec<Dynamic>, Fault>(cells.collect())
         });
     room.method::<Table>("select")

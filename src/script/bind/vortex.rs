@@ -194,6 +194,23 @@ fn place(room: &mut Room) {
                 .map(|flag| flag.text())
                 .collect::<Vec<_>>()
         });
+    room.method::<Found>("flags_by")
+        .about("What to beware of in the size and circulation by one method, as a list of texts.")
+        .words("warning doubt quality cut edge resolved")
+        .input(
+            "method",
+            "",
+            "\"vorticity_fraction\" or \"largest_circulation\"",
+        )
+        .errors("there is no such method")
+        .example(
+            with_eddies!("found[0].flags_by(\"vorticity_fraction\")"),
+            "[]",
+        )
+        .does(|e: &Found, name: String| {
+            let flags = e.eddy.flags_of(method(&name)?);
+            Ok::<_, Fault>(flags.map(|flag| flag.text()).collect::<Vec<_>>())
+        });
     room.property::<Found>("outline")
         .about("The boundary by vorticity fraction, as a list of corners [x, y].")
         .words("boundary contour polygon shape")
