@@ -19,7 +19,7 @@ mod run;
 mod spline;
 mod statistics;
 mod taper;
-mod transform;
+pub mod transform;
 mod validate;
 
 pub use plan::{Plan, PlanError, PlanOptions, WindowSize};

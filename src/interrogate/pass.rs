@@ -8,8 +8,15 @@ use super::layout::Layout;
 use super::peak::{Patch, Peak};
 use super::statistics::{StatisticsScratch, lean_variance, variance};
 use super::taper::Taper;
-use super::transform::{BATCH, Correlator, Scratch};
+use super::transform::{
+    Correlator, LANES, Lanes, Moments, Planes, Polyphase, Scratch, Search, TransformError,
+    WindowColumns, Windows, copy_weighted,
+};
+use super::transform::{Layout as PixelLayout, Peak as Sample};
 use crate::task::{Cancelled, Task};
+
+/// Rows of windows that one thread does in a stretch, so that what they share is regrouped once.
+const STRETCH: usize = 8;
 
 /// What the correlation of one window says.
 #[derive(Clone, Copy, Debug)]
@@ -43,11 +50,14 @@ pub(crate) struct Pass<'a> {
     layout: &'a Layout,
     /// Columns, rows.
     tapers: [Taper; 2],
+    /// Weight of each pixel of a window, row after row.
+    weights: Vec<f32>,
     correlator: Correlator,
-    /// How far peaks are sought (columns, rows), px.
-    reach: (usize, usize),
+    search: Search,
     /// Whether each vector gets its uncertainty.
     statistics: bool,
+    /// Lit pixels above and left of each pixel, where some are dark.
+    lit: Option<Vec<u32>>,
 }
 
 impl<'a> Pass<'a> {
@@ -58,30 +68,43 @@ impl<'a> Pass<'a> {
         layout: &'a Layout,
         reach: (usize, usize),
         statistics: bool,
-    ) -> Self {
+    ) -> Result<Self, TransformError> {
         let (width, height) = (layout.window.width, layout.window.height);
-        Self {
+        let tapers = [Taper::new(width), Taper::new(height)];
+        let [across, down] = &tapers;
+        let weights: Vec<f32> = down
+            .weights
+            .iter()
+            .flat_map(|wy| across.weights.iter().map(move |wx| wx * wy))
+            .collect();
+        Ok(Self {
             images,
             layout,
-            tapers: [Taper::new(width), Taper::new(height)],
-            correlator: Correlator::new(height, width),
-            reach,
+            correlator: Correlator::new(height, width)?.weighted(weights.clone())?,
+            tapers,
+            weights,
+            search: Search {
+                reach_x: reach.0,
+                reach_y: reach.1,
+                exclusion: 2,
+            },
             statistics,
-        }
+            lit: images.lit.as_ref().map(|lit| lit_sums(lit, images.width)),
+        })
     }
 
-    /// Correlates every window; rows of windows share the cores.
+    /// Correlates every window; stretches of rows share the cores.
     pub fn run(&self, task: &Task) -> Result<Array2<Finding>, Cancelled> {
         let columns = self.layout.columns;
         let mut out = vec![Finding::NOTHING; self.layout.rows * columns];
-        out.par_chunks_mut(columns)
+        out.par_chunks_mut(columns * STRETCH)
             .enumerate()
             .map_init(
                 || Bench::new(self),
-                |bench, (j, row)| {
-                    task.check()?;
-                    for (k, batch) in row.chunks_mut(BATCH).enumerate() {
-                        self.batch(bench, (j, k * BATCH), batch);
+                |bench, (stretch, rows)| {
+                    for (k, row) in rows.chunks_mut(columns).enumerate() {
+                        task.check()?;
+                        self.row(bench, stretch * STRETCH + k, k == 0, row);
                     }
                     Ok(())
                 },
@@ -91,171 +114,197 @@ impl<'a> Pass<'a> {
         Ok(shaped.unwrap_or_else(|_| unreachable!("one finding a window")))
     }
 
-    fn batch(&self, bench: &mut Bench, (j, first): (usize, usize), out: &mut [Finding]) {
-        let mut contents = [Contents::default(); BATCH];
-        for (l, contents) in contents.iter_mut().enumerate() {
-            let corner = self
-                .layout
-                .corner(j, (first + l).min(self.layout.columns - 1));
-            let lanes = (&mut bench.a[..], &mut bench.b[..]);
-            *contents = gather(self.images, self.layout, &self.tapers, corner, l, lanes);
-        }
-        self.correlator
-            .correlate(&bench.a, &bench.b, &mut bench.planes, &mut bench.scratch);
-        let leans = self.statistics.then(|| {
-            let (a, b) = (bench.a.as_chunks().0, bench.b.as_chunks().0);
-            lean_variance(a, b, self.layout.window.width, &mut bench.statistics)
-        });
-        for (l, out) in out.iter_mut().enumerate() {
-            let Contents { energy, lit } = contents[l];
-            let norm = (energy.0 * energy.1).sqrt();
-            if !(norm > 0.0 && norm.is_finite()) {
+    /// Correlates row `j` of windows; `fresh` when the bench does not hold the row above.
+    fn row(&self, bench: &mut Bench, j: usize, fresh: bool, out: &mut [Finding]) {
+        bench.advance(self, j, fresh);
+        for (batch, out) in out.chunks_mut(LANES).enumerate() {
+            let windows = Windows {
+                first: bench.first.pixels(),
+                second: bench.second.pixels(),
+                lit: bench.lit.as_ref().map(Polyphase::pixels),
+                start: bench.first.start(0, batch),
+                layout: &bench.pixels,
+            };
+            let reach = self.search.reach_y + 2;
+            let moments =
+                self.correlator
+                    .correlate(&windows, reach, &mut bench.planes, &mut bench.scratch);
+            let peaks = self
+                .correlator
+                .peaks(&bench.planes, &self.search, &mut bench.scratch);
+            let leans = self
+                .statistics
+                .then(|| self.leans(&windows, &moments, &mut bench.statistics));
+            for (l, out) in out.iter_mut().enumerate() {
+                let norm = moments.normalization(l);
+                let lit = self.lit_share(j, batch * LANES + l);
+                let peaks = [peaks.first[l], peaks.second[l]];
                 *out = Finding {
                     lit,
-                    ..Finding::NOTHING
+                    ..if norm > 0.0 {
+                        let leans = leans.map(|axes| axes.map(|lanes| lanes[l]));
+                        self.read(&bench.planes, l, peaks, norm, leans)
+                    } else {
+                        Finding::NOTHING
+                    }
                 };
-                continue;
             }
-            let leans = leans.map(|axes| axes.map(|lanes| lanes[l]));
-            *out = Finding {
-                lit,
-                ..read_plane(&bench.planes, self, l, norm, leans)
-            };
+        }
+    }
+
+    fn leans(&self, windows: &Windows, moments: &Moments, room: &mut Statistics) -> [Lanes; 2] {
+        let means = [&moments.first_mean, &moments.second_mean];
+        copy_weighted(
+            windows,
+            means,
+            &self.weights,
+            &mut room.first,
+            &mut room.second,
+        );
+        let width = self.layout.window.width;
+        lean_variance(&room.first, &room.second, width, &mut room.sums)
+    }
+
+    /// Share of the window in row `j`, column `i` that is lit.
+    fn lit_share(&self, j: usize, i: usize) -> f32 {
+        let Some(sums) = &self.lit else { return 1.0 };
+        let (top, left) = self.layout.corner(j, i);
+        let (w, h) = (self.layout.window.width, self.layout.window.height);
+        let at = |r: usize, c: usize| sums[r * (self.images.width + 1) + c];
+        let lit = at(top + h, left + w) + at(top, left) - at(top, left + w) - at(top + h, left);
+        lit as f32 / (w * h) as f32
+    }
+
+    /// Reads the peaks of one plane.
+    fn read(
+        &self,
+        planes: &Planes,
+        lane: usize,
+        [first, second]: [Sample; 2],
+        norm: f32,
+        leans: Option<[f32; 2]>,
+    ) -> Finding {
+        let [across, down] = &self.tapers;
+        let mut patch: Patch = self.correlator.neighbourhood(planes, lane, &first);
+        for (r, row) in patch.iter_mut().enumerate() {
+            for (c, value) in row.iter_mut().enumerate() {
+                let (x, y) = (first.column + c as i32 - 2, first.row + r as i32 - 2);
+                *value /= across.left(x) * down.left(y);
+            }
+        }
+        let peak = Peak::of(&patch);
+        let (w, h) = (self.layout.window.width, self.layout.window.height);
+        let variance = match leans {
+            Some([right, below]) => (
+                variance(right, peak.top, peak.sides.0, (w - 1) * h),
+                variance(below, peak.top, peak.sides.1, w * (h - 1)),
+            ),
+            None => (None, None),
+        };
+        Finding {
+            shift: (
+                f64::from(first.column) + peak.offset.0,
+                f64::from(first.row) + peak.offset.1,
+            ),
+            variance,
+            height: first.height * norm,
+            second: (
+                (f64::from(second.column), f64::from(second.row)),
+                second.height * norm,
+            ),
+            lit: 1.0,
         }
     }
 }
 
-/// The workplace of one thread: a batch of windows, their planes, and room for the sums.
+/// Sums of lit pixels above and left of every corner of every pixel.
+fn lit_sums(lit: &[f32], width: usize) -> Vec<u32> {
+    let height = lit.len() / width;
+    let mut sums = vec![0u32; (width + 1) * (height + 1)];
+    for r in 0..height {
+        let mut run = 0;
+        for c in 0..width {
+            run += u32::from(lit[r * width + c] > 0.0);
+            sums[(r + 1) * (width + 1) + c + 1] = sums[r * (width + 1) + c + 1] + run;
+        }
+    }
+    sums
+}
+
+/// The workplace of one thread: the rows under the present windows, regrouped, and room for what
+/// is made of them.
 struct Bench {
-    a: Vec<f32>,
-    b: Vec<f32>,
-    planes: Vec<f32>,
+    first: Polyphase,
+    second: Polyphase,
+    lit: Option<Polyphase>,
+    pixels: PixelLayout,
+    planes: Planes,
     scratch: Scratch,
-    statistics: StatisticsScratch,
+    statistics: Statistics,
+}
+
+/// Room for the statistics of one batch.
+struct Statistics {
+    first: Vec<Lanes>,
+    second: Vec<Lanes>,
+    sums: StatisticsScratch,
 }
 
 impl Bench {
     fn new(pass: &Pass) -> Self {
-        let pixels = pass.layout.window.height * pass.layout.window.width;
-        let room = || vec![0.0; pixels * BATCH];
+        let layout = pass.layout;
+        let columns = WindowColumns {
+            left: layout.left,
+            spacing: layout.step_x,
+            count: layout.columns,
+            width: layout.window.width,
+        };
+        let band = || Polyphase::new(layout.window.height, columns);
+        let first = band();
+        let pixels = if pass.statistics {
+            layout.window.width * layout.window.height
+        } else {
+            0
+        };
         Self {
-            a: room(),
-            b: room(),
-            planes: room(),
+            pixels: first.layout(),
+            first,
+            second: band(),
+            lit: pass.images.lit.as_ref().map(|_| band()),
+            planes: pass.correlator.planes(),
             scratch: pass.correlator.scratch(),
-            statistics: StatisticsScratch::new(if pass.statistics { pixels } else { 0 }),
+            statistics: Statistics {
+                first: vec![[0.0; LANES]; pixels],
+                second: vec![[0.0; LANES]; pixels],
+                sums: StatisticsScratch::new(pixels),
+            },
         }
     }
-}
 
-/// What one gathered window holds: the energy of its two weighted exposures and its lit share.
-#[derive(Clone, Copy, Default)]
-struct Contents {
-    energy: (f32, f32),
-    lit: f32,
-}
-
-/// Copies one window into its lane: weighted, its weighted mean removed, dark pixels zero.
-fn gather(
-    images: &Deformed,
-    layout: &Layout,
-    tapers: &[Taper; 2],
-    (top, left): (usize, usize),
-    lane: usize,
-    (a, b): (&mut [f32], &mut [f32]),
-) -> Contents {
-    let (w, h) = (layout.window.width, layout.window.height);
-    let [across, down] = tapers;
-    let pixels = |r: usize| {
-        let start = (top + r) * images.width + left;
-        (start..start + w).zip(&across.weights).map(move |(p, wx)| {
-            let lit = images.lit.as_ref().map_or(1.0, |l| l[p]);
-            (p, lit, lit * wx * down.weights[r])
-        })
-    };
-    let (mut sum_a, mut sum_b, mut weight, mut lit) = (0f32, 0f32, 0f32, 0f32);
-    for r in 0..h {
-        for (p, bright, w) in pixels(r) {
-            sum_a += w * images.first[p];
-            sum_b += w * images.second[p];
-            weight += w;
-            lit += bright;
-        }
-    }
-    let weight = weight.max(f32::MIN_POSITIVE);
-    let (mean_a, mean_b) = (sum_a / weight, sum_b / weight);
-    let mut energy = (0.0, 0.0);
-    for r in 0..h {
-        for (c, (p, _, w)) in pixels(r).enumerate() {
-            let va = w * (images.first[p] - mean_a);
-            let vb = w * (images.second[p] - mean_b);
-            let cell = (r * layout.window.width + c) * BATCH + lane;
-            (a[cell], b[cell]) = (va, vb);
-            energy.0 += va * va;
-            energy.1 += vb * vb;
-        }
-    }
-    Contents {
-        energy,
-        lit: lit / (w * h) as f32,
-    }
-}
-
-/// Reads the highest and the next highest peak of one plane.
-fn read_plane(
-    planes: &[f32],
-    pass: &Pass,
-    lane: usize,
-    norm: f32,
-    leans: Option<[f32; 2]>,
-) -> Finding {
-    let window = pass.layout.window;
-    let (w, h) = (window.width as isize, window.height as isize);
-    let at = |x: isize, y: isize| {
-        planes[((y.rem_euclid(h) * w + x.rem_euclid(w)) as usize) * BATCH + lane]
-    };
-    let (rx, ry) = (pass.reach.0 as isize, pass.reach.1 as isize);
-    let highest = |skip: Option<(isize, isize)>| {
-        let mut best = (f32::MIN, 0, 0);
-        for y in -ry..=ry {
-            for x in -rx..=rx {
-                if skip.is_some_and(|(sx, sy)| (x - sx).abs() <= 2 && (y - sy).abs() <= 2) {
-                    continue;
-                }
-                if at(x, y) > best.0 {
-                    best = (at(x, y), x, y);
-                }
+    /// Brings the pixels of row `j` of windows into the bands.
+    fn advance(&mut self, pass: &Pass, j: usize, fresh: bool) {
+        let (top, _) = pass.layout.corner(j, 0);
+        let height = pass.layout.window.height;
+        let new = if fresh {
+            height
+        } else {
+            pass.layout.step_y.min(height)
+        };
+        let width = pass.images.width;
+        let images = pass.images;
+        let bands = [
+            (Some(&mut self.first), Some(&images.first)),
+            (Some(&mut self.second), Some(&images.second)),
+            (self.lit.as_mut(), images.lit.as_ref()),
+        ];
+        for (band, image) in bands {
+            let (Some(band), Some(image)) = (band, image) else {
+                continue;
+            };
+            band.scroll(new);
+            for (r, mut row) in band.rows_mut().enumerate().skip(height - new) {
+                row.fill(&image[(top + r) * width..][..width]);
             }
         }
-        best
-    };
-    let (top, x, y) = highest(None);
-    let (next, x2, y2) = highest(Some((x, y)));
-    let [across, down] = &pass.tapers;
-    let patch: Patch = std::array::from_fn(|r| {
-        std::array::from_fn(|c| {
-            let (x, y) = (x + c as isize - 2, y + r as isize - 2);
-            at(x, y) / (across.left(x) * down.left(y))
-        })
-    });
-    let peak = Peak::of(&patch);
-    let (across, down) = match leans {
-        Some([across, down]) => (
-            variance(
-                across,
-                peak.top,
-                peak.sides.0,
-                (w as usize - 1) * h as usize,
-            ),
-            variance(down, peak.top, peak.sides.1, w as usize * (h as usize - 1)),
-        ),
-        None => (None, None),
-    };
-    Finding {
-        shift: (x as f64 + peak.offset.0, y as f64 + peak.offset.1),
-        variance: (across, down),
-        height: top / norm,
-        second: ((x2 as f64, y2 as f64), next / norm),
-        lit: 1.0,
     }
 }

@@ -73,7 +73,7 @@ pub enum PlanError {
     NoPass,
     /// A window outside what can be correlated.
     #[error(
-        "windows_px has a window of {width} x {height} px: each side must be 4 to 1024 px and even"
+        "windows_px has a window of {width} x {height} px: each side must be 4 to 1024 px and a product of 2, 3 and 5, such as 8, 16, 24, 32, 48, 64, 96 or 128"
     )]
     Window {
         /// Columns asked for.
@@ -109,10 +109,19 @@ impl Plan {
             return Err(PlanError::NoPass);
         }
         for &WindowSize { width, height } in &options.windows_px {
-            if [width, height]
-                .iter()
-                .any(|side| !(4..=1024).contains(side) || side % 2 != 0)
-            {
+            let usable = |side: usize| {
+                let rest = [2, 3, 5].iter().fold(side, |rest, &prime| {
+                    (0..10).fold(rest, |rest, _| {
+                        if rest % prime == 0 {
+                            rest / prime
+                        } else {
+                            rest
+                        }
+                    })
+                });
+                (4..=1024).contains(&side) && rest == 1
+            };
+            if !usable(width) || !usable(height) {
                 return Err(PlanError::Window { width, height });
             }
         }

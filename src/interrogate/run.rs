@@ -52,6 +52,9 @@ pub enum InterrogateError {
     /// A frame could not be read.
     #[error(transparent)]
     Frame(#[from] FrameError),
+    /// A window that cannot be transformed; a checked plan has none.
+    #[error(transparent)]
+    Window(#[from] super::transform::TransformError),
     /// The person who started it stopped it.
     #[error(transparent)]
     Cancelled(#[from] Cancelled),
@@ -154,7 +157,7 @@ pub fn interrogate_images(
         };
         let reach = reach(layout.window, pass == 0);
         let is_last = pass + 1 == layouts.len();
-        let findings = Pass::new(&images, layout, reach, is_last).run(task)?;
+        let findings = Pass::new(&images, layout, reach, is_last)?.run(task)?;
         let judged = judge(&findings, layout, predictor.as_ref(), plan);
         known = Some((judged.shifts.clone(), *layout));
         last = Some((judged, *layout, findings));

@@ -9,10 +9,7 @@
 
 use ndarray::Array2;
 
-use super::transform::BATCH;
-
-/// One value a lane.
-pub(crate) type Lanes = [f32; BATCH];
+use super::transform::{LANES, Lanes};
 
 /// Pixels on either side over which the contributions of neighbours are taken to be correlated:
 /// a little more than the width of a usual particle image.
@@ -29,9 +26,9 @@ impl StatisticsScratch {
     /// Room for windows of `pixels` px.
     pub fn new(pixels: usize) -> Self {
         Self {
-            soft: vec![[0.0; BATCH]; pixels],
-            lean: vec![[0.0; BATCH]; pixels],
-            sums: vec![[0.0; BATCH]; pixels],
+            soft: vec![[0.0; LANES]; pixels],
+            lean: vec![[0.0; LANES]; pixels],
+            sums: vec![[0.0; LANES]; pixels],
         }
     }
 }
@@ -50,7 +47,7 @@ pub(crate) fn lean_variance(
     [(0, 1), (1, 0)].map(|(down, right)| {
         let (rows, columns) = (height - down, width - right);
         let lean = &mut scratch.lean[..rows * columns];
-        let mut mean = [0f32; BATCH];
+        let mut mean = [0f32; LANES];
         for r in 0..rows {
             let here = r * width;
             let next = (r + down) * width + right;
@@ -58,7 +55,7 @@ pub(crate) fn lean_variance(
                 let (a0, a1) = (&a[here + c], &a[next + c]);
                 let (b0, b1) = (&scratch.soft[here + c], &scratch.soft[next + c]);
                 let out = &mut lean[r * columns + c];
-                for l in 0..BATCH {
+                for l in 0..LANES {
                     out[l] = a0[l] * b1[l] - a1[l] * b0[l];
                     mean[l] += out[l];
                 }
@@ -66,7 +63,7 @@ pub(crate) fn lean_variance(
         }
         let n = (rows * columns) as f32;
         for cell in lean.iter_mut() {
-            for l in 0..BATCH {
+            for l in 0..LANES {
                 cell[l] -= mean[l] / n;
             }
         }
@@ -83,10 +80,10 @@ fn soften(from: &[Lanes], width: usize, to: &mut [Lanes]) {
     for r in 1..height - 1 {
         for c in 1..width - 1 {
             let p = r * width + c;
-            let mut sum = [0f32; BATCH];
+            let mut sum = [0f32; LANES];
             for (k, wy) in [NEAR, 1.0 - 2.0 * NEAR, NEAR].into_iter().enumerate() {
                 let q = p + k * width - width;
-                for l in 0..BATCH {
+                for l in 0..LANES {
                     sum[l] += wy
                         * (NEAR * (from[q - 1][l] + from[q + 1][l])
                             + (1.0 - 2.0 * NEAR) * from[q][l]);
@@ -105,46 +102,46 @@ fn spread(values: &[Lanes], width: usize, sums: &mut [Lanes]) -> Lanes {
     // Running sums along each row, then along columns.
     for r in 0..height {
         let row = &values[r * width..(r + 1) * width];
-        let mut run = [0f32; BATCH];
+        let mut run = [0f32; LANES];
         for cell in &row[..REACH.min(width)] {
-            for l in 0..BATCH {
+            for l in 0..LANES {
                 run[l] += cell[l];
             }
         }
         for c in 0..width {
             if c + REACH < width {
-                for l in 0..BATCH {
+                for l in 0..LANES {
                     run[l] += row[c + REACH][l];
                 }
             }
             if c > REACH {
-                for l in 0..BATCH {
+                for l in 0..LANES {
                     run[l] -= row[c - REACH - 1][l];
                 }
             }
             sums[r * width + c] = run;
         }
     }
-    let mut total = [0f32; BATCH];
+    let mut total = [0f32; LANES];
     for c in 0..width {
-        let mut run = [0f32; BATCH];
+        let mut run = [0f32; LANES];
         for r in 0..REACH.min(height) {
-            for l in 0..BATCH {
+            for l in 0..LANES {
                 run[l] += sums[r * width + c][l];
             }
         }
         for r in 0..height {
             if r + REACH < height {
-                for l in 0..BATCH {
+                for l in 0..LANES {
                     run[l] += sums[(r + REACH) * width + c][l];
                 }
             }
             if r > REACH {
-                for l in 0..BATCH {
+                for l in 0..LANES {
                     run[l] -= sums[(r - REACH - 1) * width + c][l];
                 }
             }
-            for l in 0..BATCH {
+            for l in 0..LANES {
                 total[l] += run[l] * values[r * width + c][l];
             }
         }
@@ -201,9 +198,9 @@ mod tests {
         let values: Vec<Lanes> = (0..width * height)
             .map(|i| std::array::from_fn(|l| ((i * 7 + l * 13) % 23) as f32 - 11.0))
             .collect();
-        let mut sums = vec![[0.0; BATCH]; width * height];
+        let mut sums = vec![[0.0; LANES]; width * height];
         let fast = spread(&values, width, &mut sums);
-        for l in 0..BATCH {
+        for l in 0..LANES {
             let mut slow = 0.0;
             for i in 0..width * height {
                 for k in 0..width * height {

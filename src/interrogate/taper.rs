@@ -46,8 +46,8 @@ impl Taper {
 
     /// What is left of a pattern moved by `offset` px; never below a twentieth, so that noise far
     /// out is not blown up.
-    pub fn left(&self, offset: isize) -> f32 {
-        let m = offset.unsigned_abs();
+    pub fn left(&self, offset: i32) -> f32 {
+        let m = offset.unsigned_abs() as usize;
         self.left.get(m).copied().unwrap_or(0.0).max(0.05)
     }
 }
@@ -66,7 +66,7 @@ mod tests {
                 assert!(w[i] <= w[side / 2]);
             }
             assert_eq!(taper.left(0), 1.0);
-            assert!(taper.left(-1) < 1.0 && taper.left(side as isize) == 0.05);
+            assert!(taper.left(-1) < 1.0 && taper.left(side as i32) == 0.05);
         }
     }
 }
