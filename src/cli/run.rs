@@ -58,6 +58,7 @@ fn run_text(
         return terminal.misused(&format!("--set: {error}"));
     }
     let result: Result<_, Trouble> = language.run(&name, text);
+    terminal.clear_progress();
     for path in language.session().sandbox().written() {
         terminal.complain(&format!("wrote {}\n", short(&path)));
     }

@@ -15,6 +15,7 @@ use crate::task::Step;
 pub(crate) struct Terminal {
     colour: bool,
     shows_progress: bool,
+    bar: Arc<Mutex<Option<Bar>>>,
 }
 
 /// Prints one line to standard output. Where nobody reads it any more the line is dropped: the
@@ -32,6 +33,7 @@ impl Terminal {
         Self {
             colour: is_terminal && !no_colour,
             shows_progress: is_terminal,
+            bar: Arc::default(),
         }
     }
 
@@ -61,14 +63,23 @@ impl Terminal {
         if !self.shows_progress {
             return session;
         }
-        let bar: Mutex<Option<Bar>> = Mutex::new(None);
+        let bar = Arc::clone(&self.bar);
         session.reporting(move |step| {
             let mut bar = bar.lock().unwrap_or_else(PoisonError::into_inner);
             show_step(&mut bar, &step);
         })
     }
+
+    /// Takes away a bar whose work ended before it was done.
+    pub(crate) fn clear_progress(&self) {
+        let mut bar = self.bar.lock().unwrap_or_else(PoisonError::into_inner);
+        if let Some(bar) = bar.take() {
+            bar.drawn.finish_and_clear();
+        }
+    }
 }
 
+#[derive(Debug)]
 struct Bar {
     what: &'static str,
     total: usize,

@@ -81,7 +81,9 @@ fn talk(mut cells: Cells, terminal: &Terminal) -> Outcome {
 }
 
 fn answer(cells: &mut Cells, text: &str, terminal: &Terminal) {
-    match cells.evaluate(&with_brackets(text)) {
+    let result = cells.evaluate(&with_brackets(text));
+    terminal.clear_progress();
+    match result {
         Ok(Some(value)) => say(&value),
         Ok(None) => {}
         Err(trouble) => {

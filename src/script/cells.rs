@@ -94,25 +94,24 @@ impl Cells {
     /// A repeated `let` leaves the older value behind, out of reach but in memory: drop it.
     fn forget_shadowed(&mut self) {
         let mut seen = HashSet::new();
-        let entries: Vec<_> = self
+        // The engine lists the newest entry first.
+        let kept: Vec<_> = self
             .scope
             .iter_raw()
-            .map(|(name, constant, value)| (name.to_owned(), constant, value.clone()))
+            .filter(|(name, ..)| seen.insert((*name).to_owned()))
             .collect();
-        let mut kept: Vec<_> = entries
-            .into_iter()
-            .rev()
-            .filter(|(name, ..)| seen.insert(name.clone()))
-            .collect();
-        kept.reverse();
-        self.scope.clear();
-        for (name, constant, value) in kept {
+        if kept.len() == self.scope.len() {
+            return;
+        }
+        let mut fresh = Scope::new();
+        for (name, constant, value) in kept.into_iter().rev() {
             if constant {
-                self.scope.push_constant_dynamic(name, value);
+                fresh.push_constant_dynamic(name.to_owned(), value.clone());
             } else {
-                self.scope.push_dynamic(name, value);
+                fresh.push_dynamic(name.to_owned(), value.clone());
             }
         }
+        self.scope = fresh;
     }
 }
 
@@ -122,4 +121,99 @@ fn imports(ast: &AST) -> Vec<Stmt> {
         .filter(|s| matches!(s, Stmt::Import(..)))
         .cloned()
         .collect()
+}
+
+#[cfg(test)]
+mod tests {
+    use std::path::Path;
+
+    use super::*;
+    use crate::script::{Sandbox, Session};
+
+    fn cells(folder: &Path) -> Cells {
+        let sandbox = Sandbox::new(folder, &[], Path::new("out")).unwrap();
+        Cells::new(Language::new(Session::new(sandbox, |_| ())))
+    }
+
+    #[test]
+    fn variables_functions_and_imports_stay_from_cell_to_cell() {
+        let folder = tempfile::tempdir().unwrap();
+        std::fs::write(folder.path().join("m.rhai"), "fn half(x) { x / 2 }").unwrap();
+        let mut cells = cells(folder.path());
+        let mut value = |text: &str| cells.evaluate(text).map_err(|t| t.message);
+        assert_eq!(value("let x = 3;"), Ok(None));
+        assert_eq!(value("fn twice(n) { n * 2 }"), Ok(None));
+        assert_eq!(value("import \"m\" as m;"), Ok(None));
+        assert_eq!(value("twice(x)"), Ok(Some("6".to_owned())));
+        assert_eq!(value("m::half(x)"), Ok(Some("1.5".to_owned())));
+        assert_eq!(value("fn twice(n) { n * 20 }"), Ok(None));
+        assert_eq!(value("twice(x)"), Ok(Some("60".to_owned())));
+        assert_eq!(value("\"text\""), Ok(Some("\"text\"".to_owned())));
+    }
+
+    #[test]
+    fn a_cell_that_fails_leaves_what_was_there() {
+        let folder = tempfile::tempdir().unwrap();
+        let mut cells = cells(folder.path());
+        cells.evaluate("let x = 3;").unwrap();
+        assert!(cells.evaluate("x = 4; nowhere").is_err());
+        assert!(cells.evaluate("let y = ;").is_err());
+        cells
+            .language()
+            .session()
+            .cancel_flag()
+            .store(true, std::sync::atomic::Ordering::Relaxed);
+        assert_eq!(cells.evaluate("x").unwrap(), Some("4".to_owned()));
+    }
+
+    #[test]
+    fn a_repeated_let_keeps_the_newest_value_alone() {
+        let folder = tempfile::tempdir().unwrap();
+        let mut cells = cells(folder.path());
+        for text in [
+            "let a = 1;",
+            "let b = 2;",
+            "let a = \"new\";",
+            "const c = 3;",
+        ] {
+            cells.evaluate(text).unwrap();
+        }
+        let variables = cells.variables();
+        let names: Vec<_> = variables
+            .iter()
+            .map(|(name, kind)| (&**name, *kind))
+            .collect();
+        assert_eq!(names, [("b", "number"), ("a", "text"), ("c", "number")]);
+        assert_eq!(cells.evaluate("a").unwrap(), Some("\"new\"".to_owned()));
+        assert!(cells.evaluate("c = 4").is_err());
+    }
+
+    #[test]
+    fn an_error_names_the_cell_its_function_was_written_in() {
+        let folder = tempfile::tempdir().unwrap();
+        let mut cells = cells(folder.path());
+        cells.evaluate("fn wide(x) {\n  x.width\n}").unwrap();
+        let trouble = cells.evaluate("wide(3)").unwrap_err();
+        let place = trouble.place.unwrap();
+        assert_eq!((&*place.source, place.line), ("cell 1", 2));
+        assert_eq!(trouble.calls, ["wide, called at cell 2:1:1"]);
+    }
+
+    #[test]
+    fn a_panic_inside_is_an_error_like_others() {
+        let folder = tempfile::tempdir().unwrap();
+        let mut cells = cells(folder.path());
+        cells
+            .language
+            .engine
+            .register_fn("fall", || -> i64 { panic!("on purpose") });
+        cells.evaluate("let x = 3;").unwrap();
+        let trouble = cells.evaluate("fall()").unwrap_err();
+        assert!(
+            trouble.message.contains("on purpose"),
+            "{}",
+            trouble.message
+        );
+        assert_eq!(cells.evaluate("x").unwrap(), Some("3".to_owned()));
+    }
 }

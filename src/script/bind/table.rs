@@ -22,7 +22,24 @@ impl Kind for Table {
         its unit (diameter_mm). It prints its first rows.";
 
     fn show(&self) -> String {
-        self.preview(SHOWN)
+        let holds_something = |column: &&Column| column.cells.iter().any(|c| *c != Cell::Missing);
+        let full: Vec<_> = self
+            .columns()
+            .iter()
+            .filter(holds_something)
+            .cloned()
+            .collect();
+        let left_out = self.columns().len() - full.len();
+        match Table::of(full) {
+            Ok(shown) if left_out > 0 && !self.is_empty() => {
+                let columns = if left_out == 1 { "column" } else { "columns" };
+                format!(
+                    "{}\n({left_out} {columns} without values not shown)",
+                    shown.preview(SHOWN)
+                )
+            }
+            _ => self.preview(SHOWN),
+        }
     }
 }
 
