@@ -104,6 +104,8 @@ pub(crate) struct Predictor {
     coefficients: Axes,
     columns: Vec<Tap>,
     rows: Vec<Tap>,
+    /// Coefficients before the first node along x and along y.
+    pads: (usize, usize),
 }
 
 struct Axes {
@@ -141,6 +143,7 @@ impl Predictor {
             },
             columns,
             rows,
+            pads: (pad_x, pad_y),
         }
     }
 
@@ -166,18 +169,7 @@ impl Predictor {
 
     /// Shift (x, y) at a point that may lie between pixels.
     pub fn at(&self, x: f64, y: f64, layout: &Layout) -> (f64, f64) {
-        let (_, pad_x) = taps(
-            layout.first_x(),
-            layout.step_x,
-            layout.columns,
-            self.columns.len(),
-        );
-        let (_, pad_y) = taps(
-            layout.first_y(),
-            layout.step_y,
-            layout.rows,
-            self.rows.len(),
-        );
+        let (pad_x, pad_y) = self.pads;
         let tx = tap_at((x - layout.first_x()) / layout.step_x as f64, pad_x);
         let ty = tap_at((y - layout.first_y()) / layout.step_y as f64, pad_y);
         let read = |coefficients: &Array2<f32>| {
