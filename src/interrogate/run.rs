@@ -149,13 +149,23 @@ pub fn interrogate_images(
         let (predictor, images) = match &known {
             None => (None, Deformed::untouched(first, second, mask)),
             Some((shifts, on)) => {
-                let [a, b] = splines
-                    .get_or_insert_with(|| [SplineImage::new(first), SplineImage::new(second)]);
+                let [a, b] = match splines.take() {
+                    Some(made) => made,
+                    // Each takes a while on a large image.
+                    None => {
+                        let a = SplineImage::new(first);
+                        task.check()?;
+                        [a, SplineImage::new(second)]
+                    }
+                };
+                let [a, b] = splines.insert([a, b]);
+                task.check()?;
                 let predictor = Predictor::new(&shifts.smoothed(on), on, width, height);
                 let images = Deformed::new(a, b, &predictor, mask, (height, width));
                 (Some(predictor), images)
             }
         };
+        task.check()?;
         let reach = reach(layout.window, pass == 0);
         let is_last = pass + 1 == layouts.len();
         let findings = Pass::new(&images, layout, reach, is_last)?.run(task)?;
