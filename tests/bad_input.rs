@@ -149,12 +149,7 @@ const OPTIONS: &[Case] = &[
 ];
 
 const IMAGES: &[Case] = &[
-    (
-        "recording(\"missing.tif\");",
-        &[],
-        1,
-        "there is no file ",
-    ),
+    ("recording(\"missing.tif\");", &[], 1, "there is no file "),
     (
         "recording(\"img/nothing_*.tif\");",
         &[],
@@ -446,12 +441,7 @@ const VALUES: &[Case] = &[
         1,
         "there is no status \"good\"",
     ),
-    (
-        "figure().save(\"a.svg\");",
-        &[],
-        1,
-        "the figure is empty",
-    ),
+    ("figure().save(\"a.svg\");", &[], 1, "the figure is empty"),
     (
         "figure().shade(flow).save(\"a.svg\");",
         &[],
@@ -491,24 +481,14 @@ const SCRIPTS: &[Case] = &[
         1,
         "index 2 is past the end of the list",
     ),
-    (
-        "sqrt(1, 2);",
-        &[],
-        1,
-        "`sqrt` takes 1 value, not 2",
-    ),
+    ("sqrt(1, 2);", &[], 1, "`sqrt` takes 1 value, not 2"),
     (
         "measured(1);",
         &[],
         1,
         "`measured` takes 2 to 3 values, not 1",
     ),
-    (
-        "print(overlpa);",
-        &[],
-        1,
-        "there is no variable `overlpa`",
-    ),
+    ("print(overlpa);", &[], 1, "there is no variable `overlpa`"),
     (
         "squareroot(2);",
         &[],
@@ -559,12 +539,7 @@ const COMMAND_LINE: &[Case] = &[
         2,
         "--set: `pairs` is not of the form name=value",
     ),
-    (
-        "",
-        &["--read", "nowhere"],
-        2,
-        "cannot use the folder ",
-    ),
+    ("", &["--read", "nowhere"], 2, "cannot use the folder "),
     (
         "flow.save(\"flow.csv\");",
         &["--out", "a.rhai"],
@@ -583,12 +558,7 @@ const COMMAND_LINE: &[Case] = &[
         2,
         "invalid value '-1' for '--threads <N>'",
     ),
-    (
-        "",
-        &["--quick"],
-        2,
-        "unexpected argument '--quick' found",
-    ),
+    ("", &["--quick"], 2, "unexpected argument '--quick' found"),
 ];
 
 fn folder() -> tempfile::TempDir {
@@ -620,7 +590,14 @@ fn check(folder: &Path, (script, arguments, code, part): &Case) -> Option<String
         .unwrap();
     let shown = String::from_utf8(output.stderr).unwrap();
     let first = shown.lines().next().unwrap_or("");
-    let internal = ["panicked", "kolk itself failed", "Dynamic", "rhai::", "i64", "f64"];
+    let internal = [
+        "panicked",
+        "kolk itself failed",
+        "Dynamic",
+        "rhai::",
+        "i64",
+        "f64",
+    ];
     let fits = output.status.code() == Some(*code)
         && first.starts_with("error: ")
         && first.contains(part)

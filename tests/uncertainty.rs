@@ -32,10 +32,7 @@ fn shares(field: &VectorField, flow: &Flow) -> (f64, f64, f64) {
         }
         let (x, y) = (field.grid.x(at.1), field.grid.y(at.0));
         let (u, v) = flow.displacement(x, y, 1.0);
-        for (error, doubt) in [
-            (field.u[at] - u, u_unc[at]),
-            (field.v[at] - v, v_unc[at]),
-        ] {
+        for (error, doubt) in [(field.u[at] - u, u_unc[at]), (field.v[at] - v, v_unc[at])] {
             if doubt.is_finite() {
                 n += 1.0;
                 one += f64::from(u8::from(error.abs() < doubt));

@@ -29,9 +29,8 @@ fn hint(left: Unit, right: Unit) -> &'static str {
     let (left, right) = (left.to_string(), right.to_string());
     // One side counts in what a camera knows, the other in what a ruler or clock does.
     let apart = |camera: &str, outside: &str| {
-        let one = |a: &str, b: &str| {
-            a.contains(camera) && !b.contains(camera) && b.contains(outside)
-        };
+        let one =
+            |a: &str, b: &str| a.contains(camera) && !b.contains(camera) && b.contains(outside);
         one(&left, &right) || one(&right, &left)
     };
     if left.is_empty() || right.is_empty() {

@@ -112,7 +112,10 @@ mod tests {
         let off = Ladder::through(&[0.0, 1.0, 2.0, 3.3, 4.0, 5.0]);
         assert!(matches!(off, Err(Uneven::Off { index: 3, .. })), "{off:?}");
         let last = Ladder::through(&[0.0, 1.0, 2.0, 3.0, 4.0, 5.4]);
-        assert!(matches!(last, Err(Uneven::Off { index: 5, .. })), "{last:?}");
+        assert!(
+            matches!(last, Err(Uneven::Off { index: 5, .. })),
+            "{last:?}"
+        );
         assert_eq!(Ladder::through(&[2.0, 2.0]), Err(Uneven::TooFew));
         assert_eq!(Ladder::through(&[]), Err(Uneven::TooFew));
         assert_eq!(Ladder::through(&[0.0, 1.0, 1e11]), Err(Uneven::TooWide));

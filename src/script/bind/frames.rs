@@ -11,7 +11,7 @@ use super::super::fault::Fault;
 use super::super::kind::Kind;
 use super::super::number::number_text;
 use super::super::options::Optional;
-use crate::frames::{FrameError, Pair, Recording, RecordingOptions, Scale, matching_files};
+use crate::frames::{Pair, Recording, RecordingOptions, Scale, matching_files};
 use crate::store::write_tiff;
 
 crate::option_keys! {
