@@ -205,3 +205,183 @@ fn the_vector_belongs_to_the_window_s_centre_with_y_up() {
         e.bias
     );
 }
+
+#[test]
+fn the_plan_foretells_the_amplitude_of_a_wave() {
+    for (sides, wavelength) in [
+        (vec![64, 32, 32, 32], 64.0),
+        (vec![32], 64.0),
+        (vec![64, 32, 32, 32, 32, 32], 48.0),
+    ] {
+        let options = windows(&sides);
+        let told = Plan::new(&options).unwrap().amplitude(wavelength);
+        // A small amplitude, so that the gradient inside a window changes nothing else.
+        let flow = Flow::from(SineWave {
+            x: 0.0,
+            wavelength,
+            amplitude: 0.5,
+        });
+        let dense = ImageOptions {
+            seeding_per_px2: 0.1,
+            ..images()
+        };
+        let field = found(&flow, &dense, &options);
+        let (mut along, mut whole) = (0.0, 0.0);
+        for ((j, i), v) in field.v.indexed_iter() {
+            let (_, true_v) = flow.displacement(field.grid.x(i), field.grid.y(j), 1.0);
+            along += v * true_v;
+            whole += true_v * true_v;
+        }
+        println!(
+            "{sides:?} {wavelength}: {:.3} told {told:.3}",
+            along / whole
+        );
+        assert!(
+            (along / whole - told).abs() < 0.04,
+            "{sides:?} {wavelength}: {} told {told}",
+            along / whole
+        );
+    }
+}
+
+#[test]
+fn the_uncertainty_is_that_of_the_errors() {
+    let clean = images();
+    let noisy = |noise: f64| ImageOptions {
+        noise_of_full_scale: noise,
+        ..clean.clone()
+    };
+    let shifted = || Flow::from(Uniform { u: 0.3, v: 0.7 });
+    let cases = [
+        ("3 % noise", noisy(0.03), shifted()),
+        ("6 % noise", noisy(0.06), shifted()),
+        (
+            "a quarter leaves",
+            ImageOptions {
+                out_of_plane_loss: 0.25,
+                ..noisy(0.03)
+            },
+            shifted(),
+        ),
+        (
+            "dense",
+            ImageOptions {
+                seeding_per_px2: 0.12,
+                ..noisy(0.03)
+            },
+            shifted(),
+        ),
+        (
+            "large images",
+            ImageOptions {
+                particle_diameter_px: 3.5,
+                ..noisy(0.03)
+            },
+            shifted(),
+        ),
+        (
+            "small images",
+            ImageOptions {
+                particle_diameter_px: 1.8,
+                ..noisy(0.03)
+            },
+            shifted(),
+        ),
+        (
+            "sheared",
+            noisy(0.03),
+            Flow::from(Shear {
+                y: 127.5,
+                rate: 0.05,
+            }),
+        ),
+        (
+            "turning",
+            noisy(0.03),
+            Flow::from(SolidRotation {
+                x: 127.5,
+                y: 127.5,
+                rate: 0.05,
+            }),
+        ),
+    ];
+    for (name, options, flow) in cases {
+        let (mut within1, mut within2, mut n) = (0.0, 0.0, 0.0);
+        let (mut error2, mut told2) = (0.0, 0.0);
+        for seed in 1..=4 {
+            let options = ImageOptions {
+                seed,
+                ..options.clone()
+            };
+            let field = found(&flow, &options, &PlanOptions::default());
+            let (u_unc, v_unc) = field.unc.as_ref().unwrap();
+            for ((j, i), status) in field.status.indexed_iter() {
+                if *status != Status::Measured {
+                    continue;
+                }
+                let (u, v) = flow.displacement(field.grid.x(i), field.grid.y(j), 1.0);
+                for (error, told) in [
+                    (field.u[(j, i)] - u, u_unc[(j, i)]),
+                    (field.v[(j, i)] - v, v_unc[(j, i)]),
+                ] {
+                    if told.is_finite() {
+                        within1 += f64::from(u8::from(error.abs() < told));
+                        within2 += f64::from(u8::from(error.abs() < 2.0 * told));
+                        error2 += error * error;
+                        told2 += told * told;
+                        n += 1.0;
+                    }
+                }
+            }
+        }
+        let ratio = f64::sqrt(told2 / error2);
+        println!("{name}: {:.3} {:.3} {ratio:.3}", within1 / n, within2 / n);
+        // A normal error of known size: 68.3 % and 95.4 %.
+        assert!(
+            (0.64..=0.72).contains(&(within1 / n)),
+            "{name}: {}",
+            within1 / n
+        );
+        assert!(
+            (0.93..=0.97).contains(&(within2 / n)),
+            "{name}: {}",
+            within2 / n
+        );
+        assert!((0.85..=1.15).contains(&ratio), "{name}: {ratio}");
+    }
+}
+
+#[test]
+fn errors_of_neighbours_go_together_as_the_field_says() {
+    let flow = Flow::from(Uniform { u: 0.3, v: 0.0 });
+    let (mut square, mut product) = ([0.0; 4], [0.0; 4]);
+    let mut told = [0.0; 4];
+    for seed in 1..=4 {
+        let options = ImageOptions {
+            noise_of_full_scale: 0.05,
+            seed,
+            ..images()
+        };
+        let field = found(&flow, &options, &PlanOptions::default());
+        let correlation = field.error_correlation.clone().unwrap();
+        let off = |j: usize, i: usize| field.u[(j, i)] - 0.3;
+        for lag in 0..4 {
+            told[lag] = correlation.at(0, lag as isize);
+            for j in 3..field.grid.ny - 3 {
+                for i in 3..field.grid.nx - 3 - lag {
+                    product[lag] += off(j, i) * off(j, i + lag);
+                    square[lag] += (off(j, i).powi(2) + off(j, i + lag).powi(2)) / 2.0;
+                }
+            }
+        }
+    }
+    for lag in 0..4 {
+        let measured: f64 = product[lag] / square[lag];
+        println!("{lag}: {measured:.3} told {:.3}", told[lag]);
+        assert!(
+            (measured - told[lag]).abs() < 0.1,
+            "{lag}: {measured} told {}",
+            told[lag]
+        );
+    }
+}

@@ -332,6 +332,10 @@ impl VectorField {
                 .and(&other.status)
                 .map_collect(|&a, &b| worse(a, b)),
             unc,
+            error_correlation: self
+                .error_correlation
+                .clone()
+                .filter(|_| self.error_correlation == other.error_correlation),
             window: self.window.filter(|_| self.window == other.window),
             label: format!("{} {sign} {}", self.label, other.label),
         })

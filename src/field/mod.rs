@@ -20,7 +20,7 @@ pub use sample::Trace;
 pub(crate) use sample::{Place, on_lattice};
 pub use scalar::ScalarField;
 pub use scheme::Scheme;
-pub use vector::{Status, VectorField};
+pub use vector::{ErrorCorrelation, Status, VectorField};
 
 #[cfg(test)]
 mod gradient_tests;

@@ -1,5 +1,7 @@
 //! A vector field and what is known of each of its vectors.
 
+use std::sync::Arc;
+
 use ndarray::{Array2, Zip};
 
 use super::{Grid, ScalarField};
@@ -47,6 +49,28 @@ impl Status {
     }
 }
 
+/// How the errors of vectors near each other go together: windows that overlap share pixels, and
+/// with them noise.
+#[derive(Clone, Debug, PartialEq)]
+pub struct ErrorCorrelation {
+    values: Array2<f64>,
+}
+
+impl ErrorCorrelation {
+    /// From the correlation at (rows, columns) apart, that at (0, 0) being 1. Further apart than
+    /// `values` goes, errors are independent.
+    pub fn new(values: Array2<f64>) -> Self {
+        Self { values }
+    }
+
+    /// Correlation, -1 to 1, of the errors of one component of two vectors that many rows and
+    /// columns apart.
+    pub fn at(&self, rows: isize, columns: isize) -> f64 {
+        let at = (rows.unsigned_abs(), columns.unsigned_abs());
+        self.values.get(at).copied().unwrap_or(0.0)
+    }
+}
+
 /// Velocities on a regular grid, in `grid.length` per `time`.
 ///
 /// Invariant: `u` and `v` are finite exactly where [`Status::has_vector`] holds, NaN elsewhere.
@@ -64,6 +88,8 @@ pub struct VectorField {
     pub status: Array2<Status>,
     /// Standard uncertainty of `u` and of `v`, where it is known.
     pub unc: Option<(Array2<f64>, Array2<f64>)>,
+    /// Correlation of the errors of neighbours, where it is known.
+    pub error_correlation: Option<Arc<ErrorCorrelation>>,
     /// Side of the window each vector is a mean over, in grid lengths, where it is known.
     pub window: Option<(f64, f64)>,
     /// What the field is of: a file, a pair, a flow.
@@ -93,6 +119,7 @@ impl VectorField {
             v,
             status,
             unc: None,
+            error_correlation: None,
             window: None,
             label: label.to_owned(),
         }

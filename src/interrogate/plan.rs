@@ -1,5 +1,7 @@
 //! How a pair is interrogated: the windows of each pass and the limits of validation.
 
+use super::layout::Layout;
+use super::response::Response;
 use serde::{Deserialize, Deserializer, Serialize};
 
 /// Width and height of an interrogation window, px.
@@ -146,6 +148,21 @@ impl Plan {
     /// The options the plan was made from.
     pub fn options(&self) -> &PlanOptions {
         &self.options
+    }
+
+    /// Amplitude the plan gives a wave of displacement of this length, px, along x: 1 when the
+    /// wave comes out whole, 0 when it is lost. From the model that also gives vectors their
+    /// uncertainty; waves that last only a few windows come out lower.
+    pub fn amplitude(&self, wavelength_px: f64) -> f64 {
+        // The layout's steps matter, the size of the image does not.
+        let layouts: Option<Vec<Layout>> = self
+            .windows()
+            .iter()
+            .map(|&window| Layout::new(window, self.options.overlap, 4096, 4096))
+            .collect();
+        layouts
+            .and_then(|layouts| Response::new(&layouts))
+            .map_or(0.0, |response| response.amplitude(wavelength_px))
     }
 
     /// Windows of the passes, in order; never empty.

@@ -6,9 +6,12 @@
 //! by the same weights as displacement, so T is also what the passes make of noise: its spectrum
 //! gives the gain against a single pass and the correlation of errors between neighbours.
 
+use ndarray::Array2;
+
 use super::layout::Layout;
 use super::predictor::smoothing_response;
 use super::taper::Taper;
+use crate::field::ErrorCorrelation;
 
 /// Wave numbers along each axis from 0 to half a cycle a px, in steps.
 const STEPS: usize = 96;
@@ -92,10 +95,10 @@ impl Response {
         let (x, y) = (axis(self.limit.0), axis(self.limit.1));
         let end = |k: usize| if k == 0 || k == STEPS - 1 { 0.5 } else { 1.0 };
         let mut gone = 0.0;
-        for j in 0..STEPS {
-            for i in 0..STEPS {
+        for (j, y) in y.iter().enumerate() {
+            for (i, x) in x.iter().enumerate() {
                 let p = self.predicted[j * STEPS + i];
-                gone += end(i) * end(j) * x[i] * y[j] * (1.0 - (1.0 - p).powi(2));
+                gone += end(i) * end(j) * x * y * (1.0 - (1.0 - p).powi(2));
             }
         }
         (1.0 - gone * cell).max(0.1)
@@ -109,9 +112,25 @@ impl Response {
         }) / self.sum(&self.transfer, |_, _| 1.0)
     }
 
+    /// The correlation of errors for vectors a few windows apart, in steps of the last layout,
+    /// out to where windows no longer overlap.
+    pub fn error_correlation(&self, last: &Layout) -> ErrorCorrelation {
+        let reach = |side: usize, step: usize| side.div_ceil(step);
+        let shape = (
+            reach(last.window.height, last.step_y) + 1,
+            reach(last.window.width, last.step_x) + 1,
+        );
+        ErrorCorrelation::new(Array2::from_shape_fn(shape, |(j, i)| {
+            self.correlation((i * last.step_x) as f64, (j * last.step_y) as f64)
+        }))
+    }
+
     /// Amplitude found of a wave along one axis with this length, px.
     pub fn amplitude(&self, wavelength_px: f64) -> f64 {
         let k = 1.0 / wavelength_px / self.limit.0 * (STEPS - 1) as f64;
+        if k > (STEPS - 1) as f64 {
+            return 0.0;
+        }
         let low = (k.floor() as usize).min(STEPS - 2);
         let t = (k - low as f64).min(1.0);
         self.transfer[low] * (1.0 - t) + self.transfer[low + 1] * t

@@ -1,5 +1,6 @@
 //! From a pair or a recording to vector fields.
 
+use std::sync::Arc;
 use std::sync::atomic::{AtomicUsize, Ordering};
 
 use ndarray::Array2;
@@ -164,11 +165,14 @@ pub fn interrogate_images(
     }
     match last {
         Some((judged, layout, findings)) => {
-            // A single window's doubt, corrected for what the passes before hid and added.
-            let gain =
-                Response::new(&layouts).map_or(1.0, |r| r.gain() / r.left_to_see(REACH).sqrt());
+            let response = Response::new(&layouts);
             Ok(finish(
-                judged, &findings, gain, &layout, height, scale, label,
+                (judged, findings),
+                response.as_ref(),
+                &layout,
+                height,
+                scale,
+                label,
             ))
         }
         None => unreachable!("a plan has at least one pass"),
@@ -289,9 +293,8 @@ fn judge(
 
 /// Turns the last pass into a field with y up and the units of the calibration.
 fn finish(
-    judged: Judged,
-    findings: &Array2<Finding>,
-    gain: f64,
+    (judged, findings): (Judged, Array2<Finding>),
+    response: Option<&Response>,
     layout: &Layout,
     height: usize,
     scale: &Scale,
@@ -320,6 +323,8 @@ fn finish(
             }
         })
     };
+    // A single window's doubt, corrected for what the passes before hid and added.
+    let gain = response.map_or(1.0, |r| r.gain() / r.left_to_see(REACH).sqrt());
     let around = (
         layout.window.height / 2 / layout.step_y,
         layout.window.width / 2 / layout.step_x,
@@ -345,6 +350,7 @@ fn finish(
         v,
         status,
         unc,
+        error_correlation: response.map(|r| Arc::new(r.error_correlation(layout))),
         window: Some((
             layout.window.width as f64 * mm,
             layout.window.height as f64 * mm,
