@@ -9,6 +9,8 @@
 use ndarray::{Array2, Axis};
 use rayon::prelude::*;
 
+use super::transform::lanes_at;
+
 /// Pixels that a tap may reach past the image on every side, and room for a whole lane block.
 const MARGIN: usize = 24;
 
@@ -113,7 +115,7 @@ impl SplineImage {
             tx[l] = cx - fx;
             ty[l] = cy - fy;
             base[l] =
-                (fy as i32 + MARGIN as i32 - 2) * stride + fx as i32 + MARGIN as i32 - 2 - l as i32;
+                (whole(fy) + MARGIN as i32 - 2) * stride + whole(fx) + MARGIN as i32 - 2 - l as i32;
         }
         let wx = weights(&tx);
         let wy = weights(&ty);
@@ -128,15 +130,12 @@ impl SplineImage {
             let mut sum = [0f32; LANES];
             for (k, wyk) in wy.iter().enumerate() {
                 let start = (here + k as i32 * stride) as usize;
-                let row: &[f32; LANES + 5] =
-                    match self.coefficients[start..start + LANES + 5].try_into() {
-                        Ok(row) => row,
-                        Err(_) => unreachable!("the slice has the array's length"),
-                    };
                 let mut along = [0f32; LANES];
                 for (m, wxm) in wx.iter().enumerate() {
+                    // By value: one plain load a tap, where a shared row would be shuffled.
+                    let taps = lanes_at(&self.coefficients, start + m);
                     for l in 0..LANES {
-                        along[l] += wxm[l] * row[m + l];
+                        along[l] += wxm[l] * taps[l];
                     }
                 }
                 for l in 0..LANES {
@@ -151,6 +150,14 @@ impl SplineImage {
             }
         }
     }
+}
+
+/// A whole number from 0 to 2^22 as an integer: from the bits of its sum with 2^23, which whole
+/// vectors can do, where a cast that minds every range is done one by one.
+#[inline(always)]
+fn whole(x: f32) -> i32 {
+    const SHIFT: f32 = 8_388_608.0;
+    (x + SHIFT).to_bits() as i32 - SHIFT.to_bits() as i32
 }
 
 /// Index mirrored about the first and last sample.

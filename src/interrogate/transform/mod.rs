@@ -53,6 +53,7 @@ pub(super) use lanes::Lanes;
 pub use moments::Moments;
 pub use peaks::{Peak, Peaks, Search};
 pub use planes::Planes;
+pub(super) use spectrum::lanes_at;
 pub(super) use windows::copy_weighted;
 pub use windows::{Layout, Polyphase, PolyphaseRow, WindowColumns, Windows, gather};
 

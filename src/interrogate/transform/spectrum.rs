@@ -94,7 +94,7 @@ impl Source for WeightedRow<'_> {
 }
 
 #[inline(always)]
-pub(super) fn lanes_at(pixels: &[f32], start: usize) -> Lanes {
+pub(in crate::interrogate) fn lanes_at(pixels: &[f32], start: usize) -> Lanes {
     let mut lanes = [0.0; LANES];
     lanes.copy_from_slice(&pixels[start..start + LANES]);
     lanes
