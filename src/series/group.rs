@@ -39,10 +39,11 @@ impl Group {
         if !folder.is_dir() {
             return Err(not_ours());
         }
-        remove(folder, |name| name.starts_with(TEMPORARY))?;
-        if !is_series(folder) && !names(folder)?.is_empty() {
+        let unfinished = |name: &str| name.starts_with(TEMPORARY);
+        if !is_series(folder) && !names(folder)?.iter().all(|name| unfinished(name)) {
             return Err(not_ours());
         }
+        remove(folder, unfinished)?;
         let stays: Vec<bool> = (0..pairs)
             .map(|index| {
                 group
@@ -58,7 +59,7 @@ impl Group {
             }
             remove(&array, |name| {
                 let stale = |index: usize| !stays.get(index).copied().unwrap_or(false);
-                name.starts_with(TEMPORARY)
+                unfinished(name)
                     || (framed && chunk_index(name, dimensions(&entry)).is_some_and(stale))
             })?;
         }
