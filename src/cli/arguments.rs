@@ -48,7 +48,13 @@ pub(super) struct Places {
     #[arg(long, value_name = "DIR", global = true)]
     pub read: Vec<PathBuf>,
     /// Threads to compute on; all cores when left out. Results do not depend on it.
-    #[arg(long, value_name = "N", global = true)]
+    #[arg(
+        long,
+        value_name = "N",
+        global = true,
+        allow_negative_numbers = true,
+        value_parser = clap::builder::RangedU64ValueParser::<usize>::new().range(1..=1024)
+    )]
     pub threads: Option<usize>,
 }
 

@@ -68,7 +68,7 @@ pub fn main() -> ExitCode {
 
 fn dispatch(arguments: Arguments) -> Outcome {
     let terminal = Terminal::new();
-    if let Some(threads) = arguments.places.threads.filter(|n| *n > 0) {
+    if let Some(threads) = arguments.places.threads {
         // Fails only where the threads already run, which they do not yet.
         let _ = rayon::ThreadPoolBuilder::new()
             .num_threads(threads)

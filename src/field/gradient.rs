@@ -3,7 +3,7 @@
 use ndarray::{Array2, Zip};
 
 use super::derivative::{Axis, derivative};
-use super::{FieldError, Grid, ScalarField, Scheme, VectorField};
+use super::{FieldError, Grid, ScalarField, Scheme, Trace, VectorField};
 use crate::quantity::Unit;
 
 /// The four first derivatives of a velocity field, each of shape (ny, nx), in 1 / `time`.
@@ -119,17 +119,40 @@ impl Gradient {
     /// where they are real (Zhou, Adrian, Balachandar & Kendall 1999), with the sign of the
     /// vorticity (Wu & Christensen 2006). Half the vorticity in solid rotation.
     pub fn swirl(&self) -> ScalarField {
-        self.each("swirling strength", self.unit(), |ux, uy, vx, vy| {
-            let determinant = ux * vy - uy * vx;
-            let trace = ux + vy;
-            let squared = determinant - trace * trace / 4.0;
-            // The comparison is false for NaN, which must not turn into zero.
-            if squared <= 0.0 {
-                0.0
-            } else {
-                squared.sqrt().copysign(vx - uy)
-            }
-        })
+        self.each("swirling strength", self.unit(), swirling_strength)
+    }
+
+    /// Swirling strength along a straight line, from the gradient read there: between nodes it
+    /// keeps its sign and its zeros, which values read from [`Gradient::swirl`] itself do not,
+    /// since that has kinks.
+    ///
+    /// # Errors
+    /// [`FieldError::Outside`] when an end is outside the field.
+    pub fn swirl_along(
+        &self,
+        from: (f64, f64),
+        to: (f64, f64),
+        points: usize,
+    ) -> Result<Trace, FieldError> {
+        let read = |values: &Array2<f64>| {
+            let part = ScalarField {
+                grid: self.grid,
+                values: values.clone(),
+                unit: self.unit(),
+                name: "swirling strength".to_owned(),
+            };
+            part.along(from, to, points)
+        };
+        let [mut line, uy, vx, vy] = [
+            read(&self.ux)?,
+            read(&self.uy)?,
+            read(&self.vx)?,
+            read(&self.vy)?,
+        ];
+        for (k, value) in line.values.iter_mut().enumerate() {
+            *value = swirling_strength(*value, uy.values[k], vx.values[k], vy.values[k]);
+        }
+        Ok(line)
     }
 
     /// Q = (|rotation|² - |strain|²) / 2 = -(u_x² + v_y²) / 2 - u_y v_x: above zero where
@@ -138,5 +161,18 @@ impl Gradient {
         self.each("q", self.unit().power(2), |ux, uy, vx, vy| {
             -(ux * ux + vy * vy) / 2.0 - uy * vx
         })
+    }
+}
+
+/// Imaginary part of the eigenvalues of one gradient, signed by its vorticity.
+fn swirling_strength(ux: f64, uy: f64, vx: f64, vy: f64) -> f64 {
+    let determinant = ux * vy - uy * vx;
+    let trace = ux + vy;
+    let squared = determinant - trace * trace / 4.0;
+    // The comparison is false for NaN, which must not turn into zero.
+    if squared <= 0.0 {
+        0.0
+    } else {
+        squared.sqrt().copysign(vx - uy)
     }
 }

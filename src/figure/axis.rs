@@ -94,7 +94,11 @@ impl Axis {
             let carried = (1.0 / LARGEST..=LARGEST).contains(&size) && hi - lo > 1e-9 * size;
             let decades = !log || lo >= 1.0 / LARGEST;
             if !(lo < hi && carried && decades) {
-                let what = format!("{name}_range");
+                // Each by the name of the option it was given in.
+                let what = match name {
+                    "colour" => "range".to_owned(),
+                    axis => format!("{axis}_range"),
+                };
                 return Err(FigureError::Range { what, lo, hi });
             }
             return Ok(Self { lo, hi, log });

@@ -72,8 +72,12 @@ impl Curve {
             if found == self.x.len() {
                 return Ok(());
             }
+            let name = match self.name.as_str() {
+                "" => "the curve".to_owned(),
+                name => name.to_owned(),
+            };
             Err(FigureError::LengthsDiffer {
-                name: self.name.clone(),
+                name,
                 what,
                 expected: self.x.len(),
                 found,

@@ -5,7 +5,7 @@ use super::outlines::{Outline, OutlineSet};
 use super::transect::{Transect, transect};
 use crate::field::FieldError;
 use crate::quantity::plain_number;
-use crate::vortex::{Eddies, Eddy, Flag};
+use crate::vortex::{Eddies, Eddy, EddyOptions, Flag};
 
 /// A transect reaches this many diameters to each side of the core, as far as the field goes.
 const REACH: f64 = 1.5;
@@ -42,9 +42,11 @@ pub fn eddy_transect(found: &Eddies, eddy: &Eddy) -> Result<Figure, FieldError> 
     let reach = REACH * eddy.diameter.value();
     let from = ((x - reach).max(grid.x0), y);
     let to = ((x + reach).min(grid.x1()), y);
+    let scheme = found.options.scheme.unwrap_or(EddyOptions::DEFAULT_SCHEME);
+    let gradient = found.field.gradient(scheme)?;
     let traces = [
         found.vorticity.along(from, to, POINTS)?,
-        found.swirl.along(from, to, POINTS)?,
+        gradient.swirl_along(from, to, POINTS)?,
     ];
     let percent = plain_number(100.0 * found.options.fraction, 3);
     let level = found.options.fraction * eddy.peak_vorticity.value();
@@ -86,6 +88,40 @@ mod tests {
         let square = [[0.0, 0.0], [2.0, 0.0], [2.0, 2.0], [0.0, 2.0]];
         assert_eq!(crossings(&square, 0.5), [0.0, 2.0]);
         assert!(crossings(&square, 3.0).is_empty());
+    }
+
+    #[test]
+    fn swirl_along_a_transect_never_changes_sign_where_it_ends() {
+        // Coarse on purpose: four nodes a core radius, where the kink of the swirl shows most.
+        let grid = Grid {
+            nx: 41,
+            ny: 41,
+            x0: 0.0,
+            y0: 0.0,
+            dx: 2.0,
+            dy: 2.0,
+            length: Unit::MM,
+        };
+        let flow = Flow::from(ShieldedGaussian {
+            x: 40.0,
+            y: 41.0,
+            core_radius: 8.0,
+            peak_vorticity: -0.3,
+        });
+        let gradient = flow
+            .field(&grid, Unit::S)
+            .gradient(EddyOptions::DEFAULT_SCHEME)
+            .unwrap();
+        let line = gradient
+            .swirl_along((20.0, 41.0), (60.0, 41.0), 401)
+            .unwrap();
+        let core = |x: f64| (x - 40.0).abs() < 9.0;
+        let wrong = line
+            .x
+            .iter()
+            .zip(&line.values)
+            .filter(|(x, s)| core(**x) && **s > 0.0);
+        assert_eq!(wrong.count(), 0);
     }
 
     #[test]

@@ -1,7 +1,9 @@
 //! How a pair is interrogated: the windows of each pass and the limits of validation.
 
+use std::sync::Arc;
+
 use super::layout::Layout;
-use super::response::Response;
+use super::response::{ErrorModel, Response};
 use serde::{Deserialize, Deserializer, Serialize};
 
 /// Width and height of an interrogation window, px.
@@ -95,10 +97,12 @@ pub enum PlanError {
     },
 }
 
-/// A checked plan.
-#[derive(Clone, Debug, PartialEq)]
+/// A checked plan, with what it makes of waves and of noise.
+#[derive(Clone, Debug)]
 pub struct Plan {
     options: PlanOptions,
+    response: Arc<Response>,
+    errors: ErrorModel,
 }
 
 impl Plan {
@@ -140,8 +144,19 @@ impl Plan {
         let floor = options.median_floor_px;
         within("median_floor_px", floor, 0.001, 100.0, "0.001 to 100 px")?;
         within("least_lit", options.least_lit, 0.1, 1.0, "0.1 to 1")?;
+        // The layouts' steps matter, the size of the image does not: any that holds a window does.
+        let layouts: Vec<Layout> = options
+            .windows_px
+            .iter()
+            .filter_map(|&window| Layout::new(window, options.overlap, 4096, 4096))
+            .collect();
+        let (Some(response), Some(last)) = (Response::new(&layouts), layouts.last()) else {
+            return Err(PlanError::NoPass);
+        };
         Ok(Self {
             options: options.clone(),
+            errors: response.error_model(last),
+            response: Arc::new(response),
         })
     }
 
@@ -154,15 +169,12 @@ impl Plan {
     /// wave comes out whole, 0 when it is lost. From the model that also gives vectors their
     /// uncertainty; waves that last only a few windows come out lower.
     pub fn amplitude(&self, wavelength_px: f64) -> f64 {
-        // The layout's steps matter, the size of the image does not.
-        let layouts: Option<Vec<Layout>> = self
-            .windows()
-            .iter()
-            .map(|&window| Layout::new(window, self.options.overlap, 4096, 4096))
-            .collect();
-        layouts
-            .and_then(|layouts| Response::new(&layouts))
-            .map_or(0.0, |response| response.amplitude(wavelength_px))
+        self.response.amplitude(wavelength_px)
+    }
+
+    /// What becomes of a single window's error in the finished field.
+    pub(crate) fn error_model(&self) -> &ErrorModel {
+        &self.errors
     }
 
     /// Windows of the passes, in order; never empty.

@@ -104,6 +104,9 @@ pub(crate) struct Predictor {
     coefficients: Axes,
     columns: Vec<Tap>,
     rows: Vec<Tap>,
+    /// Where the windows lie, and how many coefficients stand before the first, along x and y.
+    layout: Layout,
+    pads: (usize, usize),
 }
 
 struct Axes {
@@ -141,6 +144,8 @@ impl Predictor {
             },
             columns,
             rows,
+            layout: *layout,
+            pads: (pad_x, pad_y),
         }
     }
 
@@ -165,21 +170,10 @@ impl Predictor {
     }
 
     /// Shift (x, y) at a point that may lie between pixels.
-    pub fn at(&self, x: f64, y: f64, layout: &Layout) -> (f64, f64) {
-        let (_, pad_x) = taps(
-            layout.first_x(),
-            layout.step_x,
-            layout.columns,
-            self.columns.len(),
-        );
-        let (_, pad_y) = taps(
-            layout.first_y(),
-            layout.step_y,
-            layout.rows,
-            self.rows.len(),
-        );
-        let tx = tap_at((x - layout.first_x()) / layout.step_x as f64, pad_x);
-        let ty = tap_at((y - layout.first_y()) / layout.step_y as f64, pad_y);
+    pub fn at(&self, x: f64, y: f64) -> (f64, f64) {
+        let layout = &self.layout;
+        let tx = tap_at((x - layout.first_x()) / layout.step_x as f64, self.pads.0);
+        let ty = tap_at((y - layout.first_y()) / layout.step_y as f64, self.pads.1);
         let read = |coefficients: &Array2<f32>| {
             let mut sum = 0.0;
             for (k, wy) in ty.weights.iter().enumerate() {
@@ -316,7 +310,7 @@ mod tests {
             for i in 0..layout.columns {
                 let x = layout.first_x() + (i * layout.step_x) as f64;
                 let y = layout.first_y() + (j * layout.step_y) as f64;
-                let (dx, dy) = predictor.at(x, y, &layout);
+                let (dx, dy) = predictor.at(x, y);
                 assert!((dx - shifts.x[(j, i)]).abs() < 1e-5);
                 assert!((dy - shifts.y[(j, i)]).abs() < 1e-5);
             }

@@ -6,15 +6,28 @@
 //! by the same weights as displacement, so T is also what the passes make of noise: its spectrum
 //! gives the gain against a single pass and the correlation of errors between neighbours.
 
+use std::sync::Arc;
+
 use ndarray::Array2;
 
 use super::layout::Layout;
 use super::predictor::smoothing_response;
+use super::statistics::REACH;
 use super::taper::Taper;
 use crate::field::ErrorCorrelation;
 
 /// Wave numbers along each axis from 0 to half a cycle a px, in steps.
 const STEPS: usize = 96;
+
+/// What becomes of a single window's error in the finished field.
+#[derive(Clone, Debug, PartialEq)]
+pub(crate) struct ErrorModel {
+    /// Factor from the uncertainty a last window shows by itself to that of the vector: what the
+    /// passes before hid from it, and what they add.
+    pub gain: f64,
+    /// How errors of neighbours go together.
+    pub correlation: Arc<ErrorCorrelation>,
+}
 
 /// The transfer of waves by a sequence of passes, on a lattice of wave numbers.
 #[derive(Clone, Debug)]
@@ -74,7 +87,8 @@ impl Response {
 
     /// Ratio of the random error after all passes to that of the last window alone.
     pub fn gain(&self) -> f64 {
-        let power = |t: &[f64]| self.sum(t, |_, _| 1.0);
+        let flat = vec![1.0; STEPS];
+        let power = |t: &[f64]| sum(t, &flat, &flat);
         (power(&self.transfer) / power(&self.single)).sqrt()
     }
 
@@ -106,23 +120,30 @@ impl Response {
 
     /// Correlation of the errors of two vectors (dx, dy) px apart.
     pub fn correlation(&self, dx: f64, dy: f64) -> f64 {
-        let turn = std::f64::consts::TAU;
-        self.sum(&self.transfer, |kx, ky| {
-            (turn * kx * dx).cos() * (turn * ky * dy).cos()
-        }) / self.sum(&self.transfer, |_, _| 1.0)
+        let along = |limit: f64, d: f64| -> Vec<f64> {
+            let turn = std::f64::consts::TAU * limit * d / (STEPS - 1) as f64;
+            (0..STEPS).map(|k| (turn * k as f64).cos()).collect()
+        };
+        let flat = vec![1.0; STEPS];
+        let (x, y) = (along(self.limit.0, dx), along(self.limit.1, dy));
+        sum(&self.transfer, &x, &y) / sum(&self.transfer, &flat, &flat)
     }
 
-    /// The correlation of errors for vectors a few windows apart, in steps of the last layout,
-    /// out to where windows no longer overlap.
-    pub fn error_correlation(&self, last: &Layout) -> ErrorCorrelation {
+    /// The model for vectors on `last`, the last layout; errors are taken to be independent where
+    /// windows no longer overlap.
+    pub fn error_model(&self, last: &Layout) -> ErrorModel {
         let reach = |side: usize, step: usize| side.div_ceil(step);
         let shape = (
             reach(last.window.height, last.step_y) + 1,
             reach(last.window.width, last.step_x) + 1,
         );
-        ErrorCorrelation::new(Array2::from_shape_fn(shape, |(j, i)| {
+        let correlation = Array2::from_shape_fn(shape, |(j, i)| {
             self.correlation((i * last.step_x) as f64, (j * last.step_y) as f64)
-        }))
+        });
+        ErrorModel {
+            gain: self.gain() / self.left_to_see(REACH).sqrt(),
+            correlation: Arc::new(ErrorCorrelation::new(correlation)),
+        }
     }
 
     /// Amplitude found of a wave along one axis with this length, px.
@@ -135,20 +156,17 @@ impl Response {
         let t = (k - low as f64).min(1.0);
         self.transfer[low] * (1.0 - t) + self.transfer[low + 1] * t
     }
+}
 
-    /// Trapezoidal sum over the lattice of the squared transfer times `f(kx, ky)`.
-    fn sum(&self, transfer: &[f64], f: impl Fn(f64, f64) -> f64) -> f64 {
-        let end = |k: usize| if k == 0 || k == STEPS - 1 { 0.5 } else { 1.0 };
-        let mut sum = 0.0;
-        for j in 0..STEPS {
-            for i in 0..STEPS {
-                let t = transfer[j * STEPS + i];
-                let at = |k: usize, limit: f64| limit * k as f64 / (STEPS - 1) as f64;
-                sum += end(i) * end(j) * t * t * f(at(i, self.limit.0), at(j, self.limit.1));
-            }
-        }
-        sum
+/// Trapezoidal sum over the lattice of the squared transfer times x(kx) y(ky).
+fn sum(transfer: &[f64], x: &[f64], y: &[f64]) -> f64 {
+    let end = |k: usize| if k == 0 || k == STEPS - 1 { 0.5 } else { 1.0 };
+    let mut sum = 0.0;
+    for (j, (row, y)) in transfer.chunks_exact(STEPS).zip(y).enumerate() {
+        let along = row.iter().zip(x).enumerate();
+        sum += end(j) * y * along.map(|(i, (t, x))| end(i) * t * t * x).sum::<f64>();
     }
+    sum
 }
 
 fn outer(rows: &[f64], columns: &[f64]) -> Vec<f64> {

@@ -9,9 +9,9 @@ use super::layout::Layout;
 use super::pass::{Finding, Pass};
 use super::plan::{Plan, WindowSize};
 use super::predictor::{Predictor, Shifts};
-use super::response::Response;
+use super::response::ErrorModel;
 use super::spline::SplineImage;
-use super::statistics::{REACH, pooled};
+use super::statistics::pooled;
 use super::validate::{MedianTest, fill};
 use crate::field::{Grid, Status, VectorField};
 use crate::frames::{FrameError, Pair, Scale};
@@ -126,13 +126,23 @@ pub fn interrogate_images(
         let (predictor, images) = match &known {
             None => (None, Deformed::untouched(first, second, mask)),
             Some((shifts, on)) => {
-                let [a, b] = splines
-                    .get_or_insert_with(|| [SplineImage::new(first), SplineImage::new(second)]);
+                let [a, b] = match splines.take() {
+                    Some(made) => made,
+                    // Each takes a while on a large image.
+                    None => {
+                        let a = SplineImage::new(first);
+                        task.check()?;
+                        [a, SplineImage::new(second)]
+                    }
+                };
+                let [a, b] = splines.insert([a, b]);
+                task.check()?;
                 let predictor = Predictor::new(&shifts.smoothed(on), on, width, height);
                 let images = Deformed::new(a, b, &predictor, mask, (height, width));
-                (Some((predictor, *on)), images)
+                (Some(predictor), images)
             }
         };
+        task.check()?;
         let reach = reach(layout.window, pass == 0);
         let is_last = pass + 1 == layouts.len();
         let findings = Pass::new(&images, layout, reach, is_last)?.run(task)?;
@@ -141,17 +151,14 @@ pub fn interrogate_images(
         last = Some((judged, *layout, findings));
     }
     match last {
-        Some((judged, layout, findings)) => {
-            let response = Response::new(&layouts);
-            Ok(finish(
-                (judged, findings),
-                response.as_ref(),
-                &layout,
-                height,
-                scale,
-                label,
-            ))
-        }
+        Some((judged, layout, findings)) => Ok(finish(
+            (judged, findings),
+            plan.error_model(),
+            &layout,
+            height,
+            scale,
+            label,
+        )),
         None => unreachable!("a plan has at least one pass"),
     }
 }
@@ -201,17 +208,17 @@ struct Judged {
 fn judge(
     findings: &Array2<Finding>,
     layout: &Layout,
-    predictor: Option<&(Predictor, Layout)>,
+    predictor: Option<&Predictor>,
     plan: &Plan,
 ) -> Judged {
     let options = plan.options();
     let mut predicted = Shifts::zero(layout.shape());
-    if let Some((predictor, on)) = predictor {
+    if let Some(predictor) = predictor {
         for j in 0..layout.rows {
             for i in 0..layout.columns {
                 let x = layout.first_x() + (i * layout.step_x) as f64;
                 let y = layout.first_y() + (j * layout.step_y) as f64;
-                (predicted.x[(j, i)], predicted.y[(j, i)]) = predictor.at(x, y, on);
+                (predicted.x[(j, i)], predicted.y[(j, i)]) = predictor.at(x, y);
             }
         }
     }
@@ -271,7 +278,7 @@ fn judge(
 /// Turns the last pass into a field with y up and the units of the calibration.
 fn finish(
     (judged, findings): (Judged, Array2<Finding>),
-    response: Option<&Response>,
+    model: &ErrorModel,
     layout: &Layout,
     height: usize,
     scale: &Scale,
@@ -279,7 +286,7 @@ fn finish(
 ) -> VectorField {
     let (_, mm) = scale.length();
     let (_, dt) = scale.time();
-    let blank = blank(layout, response, height, scale, label);
+    let blank = blank(layout, model, height, scale, label);
     let grid = blank.grid;
     let flip = |(j, i): (usize, usize)| (layout.rows - 1 - j, i);
     let status = Array2::from_shape_fn(grid.shape(), |at| judged.status[flip(at)]);
@@ -292,8 +299,7 @@ fn finish(
             }
         })
     };
-    // A single window's doubt, corrected for what the passes before hid and added.
-    let gain = response.map_or(1.0, |r| r.gain() / r.left_to_see(REACH).sqrt());
+    let gain = model.gain;
     let around = (
         layout.window.height / 2 / layout.step_y,
         layout.window.width / 2 / layout.step_x,
@@ -321,7 +327,7 @@ fn finish(
     }
 }
 
-/// The field that a pair of `size` (width, height) px will give by this plan, before anything is
+/// The field that a pair of (width, height) px will give by this plan, before anything is
 /// measured: its grid, units, window and the correlation of its errors. Every vector is outside.
 ///
 /// # Errors
@@ -334,17 +340,14 @@ pub fn blank_field(
 ) -> Result<VectorField, InterrogateError> {
     let layouts = layouts(plan, width, height, label)?;
     match layouts.last() {
-        Some(last) => {
-            let response = Response::new(&layouts);
-            Ok(blank(last, response.as_ref(), height, scale, label))
-        }
+        Some(last) => Ok(blank(last, plan.error_model(), height, scale, label)),
         None => unreachable!("a plan has at least one pass"),
     }
 }
 
 fn blank(
     layout: &Layout,
-    response: Option<&Response>,
+    model: &ErrorModel,
     height: usize,
     scale: &Scale,
     label: &str,
@@ -368,7 +371,7 @@ fn blank(
         v: nothing.clone(),
         status: Array2::from_elem(grid.shape(), Status::Outside),
         unc: Some((nothing.clone(), nothing)),
-        error_correlation: response.map(|r| Arc::new(r.error_correlation(layout))),
+        error_correlation: Some(Arc::clone(&model.correlation)),
         window: Some((
             layout.window.width as f64 * mm,
             layout.window.height as f64 * mm,

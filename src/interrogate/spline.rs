@@ -69,9 +69,16 @@ impl SplineImage {
             .enumerate()
             .for_each(|(padded_row, out)| {
                 let row = mirror(padded_row as isize - MARGIN as isize, height);
-                for (x, value) in out.iter_mut().enumerate() {
-                    let column = mirror(x as isize - MARGIN as isize, width);
-                    *value = columns[column / LANES][row][column % LANES];
+                let (before, rest) = out.split_at_mut(MARGIN);
+                let (inside, after) = rest.split_at_mut(width);
+                for (place, block) in inside.chunks_mut(LANES).zip(&columns) {
+                    place.copy_from_slice(&block[row][..place.len()]);
+                }
+                for (k, value) in before.iter_mut().enumerate() {
+                    *value = inside[mirror(k as isize - MARGIN as isize, width)];
+                }
+                for (k, value) in after.iter_mut().enumerate() {
+                    *value = inside[mirror((width + k) as isize, width)];
                 }
             });
         Self {

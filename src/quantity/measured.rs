@@ -26,12 +26,19 @@ fn name(unit: Unit) -> String {
 }
 
 fn hint(left: Unit, right: Unit) -> &'static str {
-    let text = format!("{left} {right}");
-    let holds = |s: &str| text.contains(s);
-    if holds("px") && (holds("mm") || holds("cm") || holds("m")) && !holds("frame") {
-        "px become mm only through a calibration (give the recording mm_per_px)"
-    } else if holds("frame") {
+    let (left, right) = (left.to_string(), right.to_string());
+    // One side counts in what a camera knows, the other in what a ruler or clock does.
+    let apart = |camera: &str, outside: &str| {
+        let one =
+            |a: &str, b: &str| a.contains(camera) && !b.contains(camera) && b.contains(outside);
+        one(&left, &right) || one(&right, &left)
+    };
+    if left.is_empty() || right.is_empty() {
+        "a plain number carries no unit; write it with one, such as exact(3, \"mm\")"
+    } else if apart("frame", "s") {
         "frames become seconds only through a calibration (give the recording dt_s and mm_per_px)"
+    } else if apart("px", "m") {
+        "px become mm only through a calibration (give the recording mm_per_px)"
     } else {
         "they measure different things"
     }
@@ -107,9 +114,10 @@ impl Measured {
 
     /// Its standard uncertainty in the same unit; `None` when missing.
     pub fn unc(&self) -> Option<f64> {
+        // Summed from 0.0: an empty sum of floats is -0.0, which would show.
         self.sources
             .as_ref()
-            .map(|s| s.values().map(|c| c * c).sum::<f64>().sqrt())
+            .map(|s| s.values().fold(0.0, |sum: f64, c| sum + c * c).sqrt())
     }
 
     /// True when value and uncertainty are exact.
@@ -364,7 +372,9 @@ mod tests {
             Measured::without_uncertainty(11.8123, Unit::MM).to_string(),
             "11.81 ± ? mm"
         );
-        assert_eq!(Measured::exact(12.0, Unit::MM).to_string(), "12 mm");
+        let exact = Measured::exact(12.0, Unit::MM);
+        assert_eq!(exact.to_string(), "12 mm");
+        assert!(exact.unc().is_some_and(f64::is_sign_positive));
     }
 
     #[test]

@@ -58,6 +58,9 @@ impl Call {
         path: &str,
         write: impl FnOnce(&Path) -> Result<T, E>,
     ) -> Result<T, Fault> {
+        if path.trim().is_empty() {
+            return Err(Fault::new("the file name is empty"));
+        }
         let sandbox = self.session.sandbox();
         let full = sandbox.writable(Path::new(path))?;
         let result = write(&full).map_err(Into::into)?;

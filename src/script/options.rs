@@ -233,7 +233,10 @@ fn shown(value: &Dynamic) -> String {
         return format!("\"{}\"", &*text);
     }
     if let Ok(x) = value.as_float() {
-        return number_text(x);
+        // `1e9` is refused where a whole number is needed: show that it is none.
+        let text = number_text(x);
+        let looks_whole = text.bytes().all(|b| b.is_ascii_digit() || b == b'-');
+        return if looks_whole { text + ".0" } else { text };
     }
     if let Ok(n) = value.as_int() {
         return n.to_string();

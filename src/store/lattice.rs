@@ -62,10 +62,18 @@ impl Ladder {
         };
         match coordinates.iter().position(|&c| ladder.rung(c).is_none()) {
             None => Ok(ladder),
-            Some(index) => Err(Uneven::Off {
-                index,
-                spacing: typical,
-            }),
+            Some(first_off) => {
+                // One far end off its rung bends the mean spacing: the typical one lays the blame.
+                let typical_ladder = Ladder {
+                    spacing: typical,
+                    ..ladder
+                };
+                let off = |c: &f64| typical_ladder.rung(*c).is_none();
+                Err(Uneven::Off {
+                    index: coordinates.iter().position(off).unwrap_or(first_off),
+                    spacing: typical,
+                })
+            }
         }
     }
 
@@ -103,6 +111,11 @@ mod tests {
     fn the_odd_one_out_is_named() {
         let off = Ladder::through(&[0.0, 1.0, 2.0, 3.3, 4.0, 5.0]);
         assert!(matches!(off, Err(Uneven::Off { index: 3, .. })), "{off:?}");
+        let last = Ladder::through(&[0.0, 1.0, 2.0, 3.0, 4.0, 5.4]);
+        assert!(
+            matches!(last, Err(Uneven::Off { index: 5, .. })),
+            "{last:?}"
+        );
         assert_eq!(Ladder::through(&[2.0, 2.0]), Err(Uneven::TooFew));
         assert_eq!(Ladder::through(&[]), Err(Uneven::TooFew));
         assert_eq!(Ladder::through(&[0.0, 1.0, 1e11]), Err(Uneven::TooWide));

@@ -84,6 +84,11 @@ pub fn read_vectors(path: &Path) -> Result<VectorField, StoreError> {
 }
 
 fn field_of(text: &str, label: &str) -> Result<VectorField, Problem> {
+    if text.contains('\0') {
+        return Err(Problem::whole(
+            "is no text; a table of vectors has x, y, u and v in columns of numbers".to_owned(),
+        ));
+    }
     let cells = cut(text)?;
     let columns = VectorColumns::of(&cells)?;
     let nodes = Nodes::of(&cells, &columns)?;

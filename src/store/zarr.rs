@@ -4,7 +4,7 @@
 //! beside the chunks, the regular chunk grid, the default chunk keys, the `bytes` codec. Arrays
 //! are little-endian in row-major order. Keys have "." between indices, so that all chunks of an
 //! array lie in one folder, one file each. Nothing is compressed: the digits of measured
-//! velocities are noise to a compressor.
+//! velocities are noise to a compressor. tests/outside/read_series.py has other readers open it.
 
 use std::fs;
 use std::path::Path;
@@ -118,7 +118,7 @@ mod tests {
 
     #[test]
     fn the_metadata_has_every_member_the_specification_asks_for() {
-        // Zarr core specification 3.0, "Array metadata", mandatory members.
+        // Zarr core specification 3.0, "Array metadata", mandatory members (from memory).
         let array = ArrayMetadata {
             element: Element::Float64,
             shape: vec![7, 3, 2],
@@ -144,7 +144,7 @@ mod tests {
 
     #[test]
     fn chunk_names_are_those_of_the_default_encoding_and_read_back() {
-        // Zarr core specification 3.0, "Chunk key encoding": c, then the indices.
+        // Zarr core specification 3.0, "Chunk key encoding": c, then the indices (from memory).
         assert_eq!(chunk_name(12, 3), "c.12.0.0");
         assert_eq!(chunk_index("c.12.0.0", 3), Some(12));
         for other in [

@@ -11,7 +11,7 @@ use super::super::fault::Fault;
 use super::super::kind::Kind;
 use super::super::number::number_text;
 use super::super::options::Optional;
-use crate::frames::{FrameError, Pair, Recording, RecordingOptions, Scale, matching_files};
+use crate::frames::{Pair, Recording, RecordingOptions, Scale, matching_files};
 use crate::store::write_tiff;
 
 crate::option_keys! {
@@ -137,7 +137,10 @@ pub(super) fn records(room: &mut Room) {
 
 fn open(files: Frames, options: &RecordingOptions, call: &Call) -> Result<Recording, Fault> {
     match files {
-        Frames::Pairs(pairs) => Ok(Recording::from_pairs(pairs)),
+        Frames::Pairs(pairs) => {
+            alike(&pairs)?;
+            Ok(Recording::from_pairs(pairs))
+        }
         Frames::Patterns(patterns) => {
             let files = matching_files(&patterns, call.base())?;
             // Only names were looked at so far: refuse before anything is opened.
@@ -148,6 +151,29 @@ fn open(files: Frames, options: &RecordingOptions, call: &Call) -> Result<Record
             Ok(Recording::from_files(files, options)?)
         }
     }
+}
+
+/// Refuses pairs that no one grid and no one unit could hold.
+fn alike(pairs: &[Pair]) -> Result<(), Fault> {
+    let Some(first) = pairs.first() else {
+        return Ok(());
+    };
+    for (k, pair) in pairs.iter().enumerate() {
+        let ((w, h), (width, height)) = (pair.size(), first.size());
+        if (w, h) != (width, height) {
+            return Err(Fault::new(format!(
+                "pair {k} is {w} x {h} px but pair 0 is {width} x {height} px: the pairs of a recording must be of one size"
+            )));
+        }
+        if pair.scale() != first.scale() {
+            return Err(Fault::new(format!(
+                "pair {k} is {} but pair 0 is {}: the pairs of a recording must have one calibration",
+                calibration(pair.scale()),
+                calibration(first.scale())
+            )));
+        }
+    }
+    Ok(())
 }
 
 macro_rules! with_two_pairs {
@@ -206,11 +232,15 @@ fn of_recordings(room: &mut Room) {
         });
 }
 
-fn pair(recording: &Recording, index: i64) -> Result<Pair, FrameError> {
+fn pair(recording: &Recording, index: i64) -> Result<Pair, Fault> {
     let count = i64::try_from(recording.len()).unwrap_or(i64::MAX);
     let counted = if index < 0 { index + count } else { index };
-    // An index too far below 0 is reported as the largest there is: it is past the end as well.
-    recording.pair(usize::try_from(counted).unwrap_or(usize::MAX))
+    match usize::try_from(counted) {
+        Ok(counted) => Ok(recording.pair(counted)?),
+        Err(_) => Err(Fault::new(format!(
+            "there is no pair {index}: the recording has {count}, the first of them -{count} from the end"
+        ))),
+    }
 }
 
 fn of_pairs(room: &mut Room) {

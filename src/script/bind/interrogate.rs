@@ -18,7 +18,7 @@ use crate::vortex::{EddyOptions, find_eddies};
 crate::option_keys! {
     PlanOptions {
         windows_px: "list of whole numbers or [width, height]", "px", "[64, 32, 32, 32]",
-            "Interrogation window of each pass: one number for a square, even, 4 to 1024.";
+            "Interrogation window of each pass: one number for a square; 4 to 1024, a product of 2, 3 and 5.";
         overlap: "number", "fraction", "0.75",
             "Share of a window that its neighbour also covers, 0 to 0.95.";
         median_limit: "number", "plain number", "2.0",
@@ -244,9 +244,9 @@ pub(super) fn counted(count: usize, index: i64, whole: &str, name: &str) -> Resu
         .ok_or_else(|| {
             let fault = Fault::new(format!("index {index} is past the end of the {whole}"));
             match count {
-                0 => fault.hint("it is empty"),
-                1 => fault.hint(format!("it has 1 of the {name}, number 0")),
-                n => fault.hint(format!("it has {n} {name}, numbered 0 to {}", n - 1)),
+                0 => fault.hint("there are none"),
+                1 => fault.hint("there is one, number 0"),
+                n => fault.hint(format!("there are {n} {name}, numbered 0 to {}", n - 1)),
             }
         })
 }

@@ -219,7 +219,7 @@ fn elements(room: &mut Room) {
         "vortex eddy isolated shield known flow", "",
         "shielded_gaussian(#{ x_px: 100, y_px: 100, core_radius_px: 12, peak_vorticity_per_frame: 0.3 })");
     element::<Rankine>(room, "rankine", "Solid rotation inside a core, free of vorticity outside.",
-        "vortex eddy known flow", "Rankine 1882",
+        "vortex eddy known flow", "Rankine 1872",
         "rankine(#{ x_px: 100, y_px: 100, core_radius_px: 12, circulation_px2_per_frame: 400 })");
     element::<TaylorGreen>(room, "taylor_green", "Chequered array of eddies, neighbours of opposite sense.",
         "vortex eddies array periodic known flow", "Taylor & Green 1937",

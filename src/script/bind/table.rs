@@ -65,8 +65,8 @@ fn making(room: &mut Room) {
     room.function("table")
         .about(
             "A table of columns, each given as [heading, list]. A heading carries the unit of its \
-             numbers (width_mm); measured values bring their own and take two columns, themselves \
-             and their uncertainty. A list of the eddies of several fields, as all.eddies() gives \
+             numbers (width_mm); measured values bring their own, or are converted to the heading's, and take two \
+             columns, themselves and their uncertainty. A list of the eddies of several fields, as all.eddies() gives \
              it, makes one table with the number of the field in front.",
         )
         .words("make build columns rows spreadsheet")
@@ -116,7 +116,11 @@ fn push(table: &mut Table, heading: &str, cells: &Array) -> Result<(), Fault> {
                 None => Err(misfit(heading, row, cell, "a measured value or ()")),
             })
             .collect::<Result<Vec<_>, _>>()?;
-        return Ok(table.push_measured(heading, &values)?);
+        // A heading that states a unit is kept to it: values are converted or refused.
+        return Ok(match Column::parse_heading(heading) {
+            (_, unit) if unit.is_one() => table.push_measured(heading, &values),
+            (name, unit) => table.push_measured_in(&name, unit, &values),
+        }?);
     }
     let (name, unit) = Column::parse_heading(heading);
     let cells = cells
