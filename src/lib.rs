@@ -9,6 +9,7 @@
 //! | [`task`] | the handle through which long work reports progress and is cancelled |
 //! | [`frames`] | images in: reading, pairing, calibration |
 //! | [`interrogate`] | image pairs to displacement: windows, transforms, peaks, deformation, validation |
+//! | [`series`] | the fields of a recording on disk: written, resumed, read back |
 //! | [`field`] | grid, vector and scalar fields, gradients, sampling |
 //! | [`vortex`] | finding eddies, their boundaries and sizes |
 //! | [`synth`] | known flows and the particle images they would give |
@@ -38,6 +39,7 @@ pub mod interrogate;
 pub mod prompt;
 pub mod quantity;
 pub mod script;
+pub mod series;
 pub mod store;
 pub mod synth;
 pub mod table;

@@ -2,7 +2,8 @@
 #![allow(missing_docs, clippy::unwrap_used)]
 
 use kolk::frames::{Pair, Recording, Scale};
-use kolk::interrogate::{Plan, PlanOptions, interrogate_all};
+use kolk::interrogate::{Plan, PlanOptions};
+use kolk::series::interrogate_series;
 use kolk::synth::basin;
 use kolk::task::Task;
 use kolk::vortex::{EddyOptions, find_eddies};
@@ -24,11 +25,13 @@ fn recording() -> Recording {
 #[test]
 fn every_unflagged_eddy_of_the_basin_is_where_and_as_large_and_strong_as_it_is() {
     let plan = Plan::new(&PlanOptions::default()).unwrap();
-    let fields = interrogate_all(&recording(), &plan, &Task::quiet()).unwrap();
+    let folder = tempfile::tempdir().unwrap();
+    let place = folder.path().join("basin.zarr");
+    let fields = interrogate_series(&recording(), &plan, &place, &Task::quiet()).unwrap();
     let mut unflagged = 0;
     let mut worst = [0f64; 3];
-    for (pair, field) in fields.iter().enumerate() {
-        let found = find_eddies(field, &EddyOptions::default(), &Task::quiet()).unwrap();
+    for (pair, field) in fields.fields().enumerate() {
+        let found = find_eddies(&field.unwrap(), &EddyOptions::default(), &Task::quiet()).unwrap();
         for truth in basin::true_eddies(pair) {
             let near = |e: &&kolk::vortex::Eddy| {
                 (e.x.value() - truth.x_mm).hypot(e.y.value() - truth.y_mm) < 4.0

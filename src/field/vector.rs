@@ -63,6 +63,11 @@ impl ErrorCorrelation {
         Self { values }
     }
 
+    /// The correlations at (rows, columns) apart, as far as errors go together.
+    pub fn values(&self) -> &Array2<f64> {
+        &self.values
+    }
+
     /// Correlation, -1 to 1, of the errors of one component of two vectors that many rows and
     /// columns apart.
     pub fn at(&self, rows: isize, columns: isize) -> f64 {

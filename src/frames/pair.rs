@@ -123,6 +123,28 @@ impl Pair {
         Ok((first, second))
     }
 
+    /// The same pair with its exposures in memory.
+    ///
+    /// # Errors
+    /// As [`Pair::load`].
+    pub fn in_memory(&self) -> Result<Pair, FrameError> {
+        let (first, second) = self.load()?;
+        Ok(Pair {
+            exposures: Exposures::InMemory(first, second),
+            ..self.clone()
+        })
+    }
+
+    /// Files and positions of the pages its exposures stand in; none for a pair in memory.
+    pub fn places(&self) -> Vec<(Arc<Path>, usize)> {
+        let place = |source: &Source| (source.file.clone(), source.page.position);
+        match &self.exposures {
+            Exposures::InMemory(..) => Vec::new(),
+            Exposures::InFiles(first, second) => vec![place(first), place(second)],
+            Exposures::Stacked(source) => vec![place(source)],
+        }
+    }
+
     fn names(&self) -> (String, String) {
         match &self.exposures {
             Exposures::InFiles(first, second) => (first.name(), second.name()),

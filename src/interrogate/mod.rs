@@ -23,4 +23,4 @@ pub mod transform;
 mod validate;
 
 pub use plan::{Plan, PlanError, PlanOptions, WindowSize};
-pub use run::{InterrogateError, interrogate, interrogate_all, interrogate_images};
+pub use run::{ALGORITHM, InterrogateError, blank_field, interrogate, interrogate_images};

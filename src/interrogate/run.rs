@@ -1,10 +1,8 @@
-//! From a pair or a recording to vector fields.
+//! From a pair to its vector field.
 
 use std::sync::Arc;
-use std::sync::atomic::{AtomicUsize, Ordering};
 
 use ndarray::Array2;
-use rayon::prelude::*;
 
 use super::deform::Deformed;
 use super::layout::Layout;
@@ -16,8 +14,12 @@ use super::spline::SplineImage;
 use super::statistics::pooled;
 use super::validate::{MedianTest, fill};
 use crate::field::{Grid, Status, VectorField};
-use crate::frames::{FrameError, Pair, Recording, Scale};
+use crate::frames::{FrameError, Pair, Scale};
 use crate::task::{Cancelled, Task};
+
+/// Number of the method: raised with every change that gives the same images and plan other
+/// numbers, so that fields on disk are not taken for what would now be computed.
+pub const ALGORITHM: u32 = 1;
 
 /// Why a pair could not be interrogated.
 #[derive(Debug, thiserror::Error)]
@@ -77,31 +79,6 @@ pub fn interrogate(pair: &Pair, plan: &Plan, task: &Task) -> Result<VectorField,
         pair.label(),
         task,
     )
-}
-
-/// Interrogates every pair of a recording, over all cores; one field a pair, in order.
-///
-/// Reports progress in pairs. The fields do not depend on the number of threads.
-///
-/// # Errors
-/// [`InterrogateError`] of the first pair that fails, or when `task` was cancelled.
-pub fn interrogate_all(
-    recording: &Recording,
-    plan: &Plan,
-    task: &Task,
-) -> Result<Vec<VectorField>, InterrogateError> {
-    let total = recording.len();
-    let done = AtomicUsize::new(0);
-    task.report("pairs", 0, total);
-    recording
-        .pairs()
-        .par_iter()
-        .map(|pair| {
-            let field = interrogate(pair, plan, task)?;
-            task.report("pairs", done.fetch_add(1, Ordering::Relaxed) + 1, total);
-            Ok(field)
-        })
-        .collect()
 }
 
 /// Interrogates two exposures given as grey levels (row 0 at the top, equal shapes).
@@ -307,18 +284,10 @@ fn finish(
     scale: &Scale,
     label: &str,
 ) -> VectorField {
-    let (length, mm) = scale.length();
-    let (time, dt) = scale.time();
-    let lowest = layout.first_y() + ((layout.rows - 1) * layout.step_y) as f64;
-    let grid = Grid {
-        nx: layout.columns,
-        ny: layout.rows,
-        x0: layout.first_x() * mm,
-        y0: (height as f64 - 1.0 - lowest) * mm,
-        dx: layout.step_x as f64 * mm,
-        dy: layout.step_y as f64 * mm,
-        length,
-    };
+    let (_, mm) = scale.length();
+    let (_, dt) = scale.time();
+    let blank = blank(layout, model, height, scale, label);
+    let grid = blank.grid;
     let flip = |(j, i): (usize, usize)| (layout.rows - 1 - j, i);
     let status = Array2::from_shape_fn(grid.shape(), |at| judged.status[flip(at)]);
     let take = |values: &Array2<f64>, factor: f64| {
@@ -350,12 +319,58 @@ fn finish(
     let u = take(&judged.shifts.x, mm / dt);
     let v = take(&judged.shifts.y, -mm / dt);
     VectorField {
-        grid,
-        time,
         u,
         v,
         status,
         unc,
+        ..blank
+    }
+}
+
+/// The field that a pair of (width, height) px will give by this plan, before anything is
+/// measured: its grid, units, window and the correlation of its errors. Every vector is outside.
+///
+/// # Errors
+/// [`InterrogateError::ImageTooSmall`].
+pub fn blank_field(
+    plan: &Plan,
+    (width, height): (usize, usize),
+    scale: &Scale,
+    label: &str,
+) -> Result<VectorField, InterrogateError> {
+    let layouts = layouts(plan, width, height, label)?;
+    match layouts.last() {
+        Some(last) => Ok(blank(last, plan.error_model(), height, scale, label)),
+        None => unreachable!("a plan has at least one pass"),
+    }
+}
+
+fn blank(
+    layout: &Layout,
+    model: &ErrorModel,
+    height: usize,
+    scale: &Scale,
+    label: &str,
+) -> VectorField {
+    let (length, mm) = scale.length();
+    let lowest = layout.first_y() + ((layout.rows - 1) * layout.step_y) as f64;
+    let grid = Grid {
+        nx: layout.columns,
+        ny: layout.rows,
+        x0: layout.first_x() * mm,
+        y0: (height as f64 - 1.0 - lowest) * mm,
+        dx: layout.step_x as f64 * mm,
+        dy: layout.step_y as f64 * mm,
+        length,
+    };
+    let nothing = Array2::from_elem(grid.shape(), f64::NAN);
+    VectorField {
+        grid,
+        time: scale.time().0,
+        u: nothing.clone(),
+        v: nothing.clone(),
+        status: Array2::from_elem(grid.shape(), Status::Outside),
+        unc: Some((nothing.clone(), nothing)),
         error_correlation: Some(Arc::clone(&model.correlation)),
         window: Some((
             layout.window.width as f64 * mm,

@@ -48,23 +48,23 @@ impl Call {
         Ok(self.session.sandbox().readable(Path::new(path))?)
     }
 
-    /// Lets `write` write the file `path`, with its folder made; once it has, the file counts as
-    /// written.
+    /// Lets `write` write the file (or folder) `path`, with the folder it goes to made; once it
+    /// has, the file counts as written. Gives what `write` gives.
     ///
     /// # Errors
     /// A path outside the output folder, a folder that cannot be made, what `write` says.
-    pub fn write<E: Into<Fault>>(
+    pub fn write<T, E: Into<Fault>>(
         &self,
         path: &str,
-        write: impl FnOnce(&Path) -> Result<(), E>,
-    ) -> Result<(), Fault> {
+        write: impl FnOnce(&Path) -> Result<T, E>,
+    ) -> Result<T, Fault> {
         if path.trim().is_empty() {
             return Err(Fault::new("the file name is empty"));
         }
         let sandbox = self.session.sandbox();
         let full = sandbox.writable(Path::new(path))?;
-        write(&full).map_err(Into::into)?;
+        let result = write(&full).map_err(Into::into)?;
         sandbox.note(full);
-        Ok(())
+        Ok(result)
     }
 }

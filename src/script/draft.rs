@@ -9,6 +9,7 @@ use rhai::{Dynamic, Engine, Module};
 
 use super::argument::Shape;
 use super::bind_fn::{BindFunction, BindMethod};
+use super::fault::Fault;
 use super::kind::{Kind, Subject, learn};
 use super::record::{Example, Form, Input, Outcome, Record};
 use super::registry::{KindRecord, Registration};
@@ -338,9 +339,13 @@ fn register_kind<T: Kind>(engine: &mut Engine) {
     }
     if T::HAS_ITEMS {
         let mut module = Module::new();
-        module.set_iter(TypeId::of::<Arc<T>>(), |held| {
-            let items = held.try_cast::<Arc<T>>().map(|held| held.items());
-            Box::new(items.unwrap_or_default().into_iter())
+        module.set_iter_result(TypeId::of::<Arc<T>>(), |held| {
+            match held.try_cast::<Arc<T>>() {
+                Some(held) => Box::new(
+                    (0..held.count()).map(move |i| held.item(i).map_err(Fault::into_error)),
+                ),
+                None => Box::new(std::iter::empty()),
+            }
         });
         engine.register_global_module(Rc::new(module));
     }

@@ -7,6 +7,7 @@ use std::sync::Arc;
 
 use rhai::{Array, Dynamic, FLOAT, FnPtr, INT, ImmutableString, Map};
 
+use super::fault::Fault;
 use super::number::number_text;
 
 /// A Rust type that scripts hold as a whole value. It is kept behind an [`Arc`]: copying it in a
@@ -19,9 +20,17 @@ pub trait Kind: Sized + 'static {
     /// The short summary a prompt shows and `print` prints.
     fn show(&self) -> String;
 
-    /// What `for` goes through, in order; empty for a kind it cannot go through.
-    fn items(&self) -> Vec<Dynamic> {
-        Vec::new()
+    /// How many items `for` goes through; 0 for a kind it cannot go through.
+    fn count(&self) -> usize {
+        0
+    }
+
+    /// The item `for` comes to at `index`, below [`Kind::count`].
+    ///
+    /// # Errors
+    /// An item that cannot be had, such as one on a disk that is gone.
+    fn item(&self, index: usize) -> Result<Dynamic, Fault> {
+        Err(Fault::new(format!("a {} has no item {index}", Self::NAME)))
     }
 
     /// True for a kind that `for` can go through.

@@ -3,6 +3,9 @@
 use std::io::{self, BufWriter, Write};
 use std::path::Path;
 
+/// How the names of unfinished files begin; a program killed while writing leaves them behind.
+pub(crate) const TEMPORARY: &str = ".kolk-";
+
 /// Why a file could not be written or read.
 #[derive(Debug, thiserror::Error)]
 #[non_exhaustive]
@@ -86,7 +89,7 @@ fn write_beside(
         return Err(io::Error::other("a folder has that name"));
     }
     let mut builder = tempfile::Builder::new();
-    builder.prefix(".kolk-");
+    builder.prefix(TEMPORARY);
     // A temporary file is private by default; results get the rights any new file gets.
     #[cfg(unix)]
     builder.permissions(std::os::unix::fs::PermissionsExt::from_mode(0o666));

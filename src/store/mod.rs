@@ -9,7 +9,9 @@ mod lattice;
 mod tiff;
 mod vector_columns;
 mod vectors;
+pub(crate) mod zarr;
 
+pub(crate) use atomic::TEMPORARY;
 pub use atomic::{StoreError, write_atomically};
 pub use tiff::{write_tiff, write_tiff_pages};
 pub use vectors::{read_vectors, save_vectors};

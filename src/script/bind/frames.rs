@@ -42,11 +42,12 @@ impl Kind for Recording {
         )
     }
 
-    fn items(&self) -> Vec<Dynamic> {
-        let items = self.pairs().iter();
-        items
-            .map(|pair| Dynamic::from(Arc::new(pair.clone())))
-            .collect()
+    fn count(&self) -> usize {
+        self.len()
+    }
+
+    fn item(&self, index: usize) -> Result<Dynamic, Fault> {
+        Ok(Dynamic::from(Arc::new(self.pair(index)?)))
     }
 
     const HAS_ITEMS: bool = true;

@@ -10,10 +10,10 @@ use super::super::fault::Fault;
 use super::super::kind::Kind;
 use super::super::options::Optional;
 use super::vortex::FoundEddies;
-use crate::field::VectorField;
 use crate::frames::{Pair, Recording};
-use crate::interrogate::{Plan, PlanOptions, interrogate, interrogate_all};
-use crate::vortex::{EddyOptions, VortexError, find_eddies};
+use crate::interrogate::{Plan, PlanOptions, interrogate};
+use crate::series::{Series, default_name, interrogate_series};
+use crate::vortex::{EddyOptions, find_eddies};
 
 crate::option_keys! {
     PlanOptions {
@@ -39,31 +39,26 @@ impl Kind for Plan {
     }
 }
 
-/// The vector fields of a recording, one a pair.
-#[derive(Clone, Debug)]
-pub(super) struct Series(pub Vec<Arc<VectorField>>);
-
 impl Kind for Series {
     const NAME: &'static str = "series of fields";
     const ABOUT: &'static str = "Vector fields one after another, one a pair of a recording, all on \
-        one grid; `for` goes through them, [i] picks one.";
+        one grid. They lie on disk and load when they are used; `for` goes through them, [i] picks \
+        one.";
 
     fn show(&self) -> String {
-        match self.0.first() {
-            None => "series of fields, empty".to_owned(),
-            Some(first) => format!(
-                "series of {} fields, the first: {}",
-                self.0.len(),
-                first.show()
-            ),
-        }
+        let first = match self.field(0) {
+            Ok(first) => first.show(),
+            Err(error) => error.to_string(),
+        };
+        format!("series of {} fields, the first: {first}", self.len())
     }
 
-    fn items(&self) -> Vec<Dynamic> {
-        self.0
-            .iter()
-            .map(|field| Dynamic::from(Arc::clone(field)))
-            .collect()
+    fn count(&self) -> usize {
+        self.len()
+    }
+
+    fn item(&self, index: usize) -> Result<Dynamic, Fault> {
+        Ok(Dynamic::from(Arc::new(self.field(index)?)))
     }
 
     const HAS_ITEMS: bool = true;
@@ -112,22 +107,39 @@ pub(super) fn records(room: &mut Room) {
             interrogate(pair, &*given(plan)?, &call.task()).map_err(Fault::from)
         });
     room.method::<Recording>("interrogate")
-        .about("The vector fields of all pairs, over all cores, with progress; Ctrl-C stops it.")
-        .words("correlate displacement velocity vectors measure series all")
+        .about(
+            "The vector fields of all pairs, over all cores, with progress; Ctrl-C stops it. They \
+             are written as one Zarr group below the output folder, frame by frame: run again, \
+             what is there from the same images and plan is kept, and only the rest is computed.",
+        )
+        .words("correlate displacement velocity vectors measure series all zarr resume")
         .input("plan", "", "how; the default plan when left out")
+        .input(
+            "folder",
+            "",
+            "name of the Zarr group; left out, series/….zarr by the files and the plan",
+        )
         .unit("px/frame, or mm/s for a calibrated recording")
-        .errors("a frame cannot be read or is smaller than the window")
-        .source("Scarano 2002; Wereley & Meinhart 2001; Westerweel & Scarano 2005")
+        .errors(
+            "a frame cannot be read or is smaller than the window, the pairs differ in size, or \
+             the folder holds something else",
+        )
+        .source("Scarano 2002; Wereley & Meinhart 2001; Westerweel & Scarano 2005; Zarr 3.0")
         .example(
             with_a_recording!(
                 "recording([p, p]).interrogate(plan(#{ windows_px: [32], overlap: 0 })).len()"
             ),
             "2",
         )
+        .example(
+            with_a_recording!(
+                "let all = recording([p, p]).interrogate(plan(#{ windows_px: [32], overlap: 0 }), \"steady.zarr\");\nfor flow in all { print(decimals(flow.u.mean().value, 1)); }"
+            ),
+            "2.0\n2.0",
+        )
         .does(
-            |recording: &Recording, plan: Option<Arc<Plan>>, call: Call| {
-                let fields = interrogate_all(recording, &*given(plan)?, &call.task())?;
-                Ok::<_, Fault>(Series(fields.into_iter().map(Arc::new).collect()))
+            |recording: &Recording, plan: Option<Arc<Plan>>, folder: Option<String>, call: Call| {
+                series(recording, &*given(plan)?, folder, &call)
             },
         );
     of_series(room);
@@ -138,6 +150,21 @@ fn given(plan: Option<Arc<Plan>>) -> Result<Arc<Plan>, Fault> {
         Some(plan) => Ok(plan),
         None => Ok(Arc::new(Plan::new(&PlanOptions::default())?)),
     }
+}
+
+fn series(
+    recording: &Recording,
+    plan: &Plan,
+    folder: Option<String>,
+    call: &Call,
+) -> Result<Series, Fault> {
+    let folder = match folder {
+        Some(folder) => folder,
+        None => default_name(recording, plan)?,
+    };
+    call.write(&folder, |path| {
+        interrogate_series(recording, plan, path, &call.task())
+    })
 }
 
 fn of_series(room: &mut Room) {
@@ -151,22 +178,36 @@ fn of_series(room: &mut Room) {
             ),
             "3",
         )
-        .does(|series: &Series| series.0.len());
+        .does(|series: &Series| series.len());
+    room.property::<Series>("kept")
+        .about("How many of its fields were there already, from an earlier run.")
+        .words("resume reuse again count")
+        .unit("count")
+        .example(
+            with_a_recording!("let how = plan(#{ windows_px: [32], overlap: 0 });\nrecording([p, p]).interrogate(how, \"a.zarr\");\nrecording([p, p, p]).interrogate(how, \"a.zarr\").kept"),
+            "2",
+        )
+        .does(|series: &Series| series.kept());
     room.index::<Series>()
         .about("The field of this number.")
         .words("pick choose one")
         .input("index", "count", "which field, from 0; -1 is the last")
         .unit("px/frame, or mm/s")
-        .errors("the series has no such field")
+        .errors("the series has no such field, or it was overwritten since")
         .example(
             with_a_recording!("let all = recording([p, p]).interrogate(plan(#{ windows_px: [64], overlap: 0 }));\nall[-1].status_count(\"measured\")"),
             "4",
         )
-        .does(|series: &Series, index: i64| item(&series.0, index, "series", "fields"));
+        .does(|series: &Series, index: i64| {
+            let index = counted(series.len(), index, "series", "fields")?;
+            series.field(index).map_err(Fault::from)
+        });
     room.method::<Series>("eddies")
         .about("The eddies of every field, as a list with one entry a field; over all cores.")
         .words("vortex vortices find detect cores")
-        .errors("an option makes no sense or a field is smaller than 5 x 5 nodes")
+        .errors(
+            "an option makes no sense, a field is smaller than 5 x 5 nodes or was overwritten since",
+        )
         .source("Zhou, Adrian, Balachandar & Kendall 1999 (swirling strength)")
         .example(
             with_a_recording!("let all = recording([p, p]).interrogate(plan(#{ windows_px: [32], overlap: 0.5 }));\nall.eddies().len()"),
@@ -181,25 +222,25 @@ fn all_eddies(
     series: &Series,
     options: &EddyOptions,
     call: &Call,
-) -> Result<Vec<FoundEddies>, VortexError> {
+) -> Result<Vec<FoundEddies>, Fault> {
     use rayon::prelude::*;
     let task = call.task();
-    series
-        .0
-        .par_iter()
-        .map(|field| find_eddies(field, options, &task))
-        .map(|found| found.map(|found| FoundEddies(Arc::new(found))))
+    (0..series.len())
+        .into_par_iter()
+        .map(|index| {
+            let found = find_eddies(&series.field(index)?, options, &task)?;
+            Ok(FoundEddies(Arc::new(found)))
+        })
         .collect()
 }
 
-/// The item of this number, counted from the end below 0.
-pub(super) fn item<T: Clone>(items: &[T], index: i64, whole: &str, name: &str) -> Result<T, Fault> {
-    let count = i64::try_from(items.len()).unwrap_or(i64::MAX);
-    let counted = if index < 0 { index + count } else { index };
-    usize::try_from(counted)
+/// The place among `count` of an index that counts from the end below 0.
+pub(super) fn counted(count: usize, index: i64, whole: &str, name: &str) -> Result<usize, Fault> {
+    let length = i64::try_from(count).unwrap_or(i64::MAX);
+    let place = if index < 0 { index + length } else { index };
+    usize::try_from(place)
         .ok()
-        .and_then(|i| items.get(i))
-        .cloned()
+        .filter(|place| *place < count)
         .ok_or_else(|| {
             let fault = Fault::new(format!("index {index} is past the end of the {whole}"));
             match count {

@@ -10,7 +10,7 @@ use super::super::fault::Fault;
 use super::super::kind::Kind;
 use super::super::options::Optional;
 use super::field::unknown_word;
-use super::interrogate::item;
+use super::interrogate::counted;
 use crate::field::VectorField;
 use crate::quantity::Measured;
 use crate::vortex::{Eddies, Eddy, EddyOptions, Method, find_eddies};
@@ -42,14 +42,12 @@ pub(super) struct Found {
 pub(super) struct FoundEddies(pub Arc<Eddies>);
 
 impl FoundEddies {
-    fn all(&self) -> Vec<Arc<Found>> {
-        let found = |eddy: &Eddy| {
-            Arc::new(Found {
-                among: Arc::clone(&self.0),
-                eddy: eddy.clone(),
-            })
-        };
-        self.0.list.iter().map(found).collect()
+    fn pick(&self, index: i64) -> Result<Arc<Found>, Fault> {
+        let list = &self.0.list;
+        Ok(Arc::new(Found {
+            among: Arc::clone(&self.0),
+            eddy: list[counted(list.len(), index, "eddies", "eddies")?].clone(),
+        }))
     }
 }
 
@@ -70,8 +68,12 @@ impl Kind for FoundEddies {
         text
     }
 
-    fn items(&self) -> Vec<Dynamic> {
-        self.all().into_iter().map(Dynamic::from).collect()
+    fn count(&self) -> usize {
+        self.0.list.len()
+    }
+
+    fn item(&self, index: usize) -> Result<Dynamic, Fault> {
+        Ok(Dynamic::from(self.pick(index as i64)?))
     }
 
     const HAS_ITEMS: bool = true;
@@ -137,7 +139,7 @@ fn finding(room: &mut Room) {
                 return Err(Fault::new("no eddies were found in this field")
                     .hint("`found.len()` tells beforehand"));
             }
-            item(&found.all(), index, "eddies", "eddies")
+            found.pick(index)
         });
     room.property::<FoundEddies>("vorticity")
         .about("The vorticity they were found in.")
