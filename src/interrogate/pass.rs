@@ -28,8 +28,6 @@ pub(crate) struct Finding {
     pub variance: (Option<f64>, Option<f64>),
     /// Height of that peak as a correlation coefficient, -1 to 1.
     pub height: f32,
-    /// Residual shift of the next highest peak, whole px, and its height.
-    pub second: ((f64, f64), f32),
     /// Share of the window that was lit in both exposures.
     pub lit: f32,
 }
@@ -39,7 +37,6 @@ impl Finding {
         shift: (0.0, 0.0),
         variance: (None, None),
         height: 0.0,
-        second: ((0.0, 0.0), 0.0),
         lit: 0.0,
     };
 }
@@ -138,12 +135,11 @@ impl<'a> Pass<'a> {
             for (l, out) in out.iter_mut().enumerate() {
                 let norm = moments.normalization(l);
                 let lit = self.lit_share(j, batch * LANES + l);
-                let peaks = [peaks.first[l], peaks.second[l]];
                 *out = Finding {
                     lit,
                     ..if norm > 0.0 {
                         let leans = leans.map(|axes| axes.map(|lanes| lanes[l]));
-                        self.read(&bench.planes, l, peaks, norm, leans)
+                        self.read(&bench.planes, l, peaks.first[l], norm, leans)
                     } else {
                         Finding::NOTHING
                     }
@@ -175,12 +171,12 @@ impl<'a> Pass<'a> {
         lit as f32 / (w * h) as f32
     }
 
-    /// Reads the peaks of one plane.
+    /// Reads the highest peak of one plane.
     fn read(
         &self,
         planes: &Planes,
         lane: usize,
-        [first, second]: [Sample; 2],
+        first: Sample,
         norm: f32,
         leans: Option<[f32; 2]>,
     ) -> Finding {
@@ -208,10 +204,6 @@ impl<'a> Pass<'a> {
             ),
             variance,
             height: first.height * norm,
-            second: (
-                (f64::from(second.column), f64::from(second.row)),
-                second.height * norm,
-            ),
             lit: 1.0,
         }
     }

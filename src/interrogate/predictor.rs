@@ -24,9 +24,9 @@ impl Shifts {
 
     /// The shifts with what the next window cannot hold stable removed.
     ///
-    /// A top-hat window of side W answers a wave of length λ with sinc(W/λ), which is negative
-    /// for λ between W/2 and W: fed back through the predictor such waves would grow. Each axis
-    /// is therefore smoothed by the least-squares parabola over about 1.25 W (Savitzky & Golay
+    /// A window answers the shortest waves with the wrong sign (an even one of side W with
+    /// sinc(W/λ), negative for λ between W/2 and W; a tapered one less, and only for shorter
+    /// waves): fed back through the predictor they would grow. Each axis is therefore smoothed by the least-squares parabola over about 1.25 W (Savitzky & Golay
     /// 1964), which leaves waves longer than 1.5 W nearly whole. Towards an edge the stretch
     /// shrinks evenly, so that a straight profile stays straight.
     pub fn smoothed(&self, layout: &Layout) -> Self {
@@ -319,7 +319,8 @@ mod tests {
 
     #[test]
     fn smoothing_keeps_every_unstable_wave_from_growing() {
-        // |F (1 - S)| < 1 for all waves the grid carries, F measured on a long line.
+        // |F (1 - S)| < 1 for all waves the grid carries, F measured on a long line, S that of an
+        // even window: the worst case, since a tapered one is never further below zero.
         for (side, step) in [(32, 8), (32, 16), (32, 4), (24, 6), (64, 16)] {
             let reach = (5 * side) / (8 * step);
             for k in 1..=100 {

@@ -222,7 +222,7 @@ fn judge(
             }
         }
     }
-    let mut shifts = predicted.clone();
+    let mut shifts = predicted;
     for (at, finding) in findings.indexed_iter() {
         shifts.x[at] += finding.shift.0;
         shifts.y[at] += finding.shift.1;
@@ -241,24 +241,6 @@ fn judge(
             if *candidate {
                 let d = (shifts.x[at], shifts.y[at]);
                 good[at] = test.fits(&shifts, &before, at, d);
-            }
-        }
-    }
-    // A peak drowned by a chance one may still be the second highest.
-    let accepted = good.clone();
-    for (at, finding) in findings.indexed_iter() {
-        if signal[at] && !accepted[at] && finding.second.1 > 0.0 {
-            let d = (
-                predicted.x[at] + finding.second.0.0,
-                predicted.y[at] + finding.second.0.1,
-            );
-            // Whole px: half a px of slack on each axis before the test's own limit.
-            let near = MedianTest {
-                floor_px: test.floor_px + 0.25,
-                ..test
-            };
-            if near.fits(&shifts, &accepted, at, d) {
-                (shifts.x[at], shifts.y[at]) = d;
             }
         }
     }
