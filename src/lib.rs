@@ -1,5 +1,5 @@
-//! kolk turns recordings of seeded, sheet-lit flow into eddy sizes, circulations and flow
-//! statistics that carry their uncertainty.
+//! kolk turns recordings of seeded, sheet-lit flow into vectors, each with its standard
+//! uncertainty, and into eddy sizes, circulations and flow statistics.
 //!
 //! # The map of the crate
 //!

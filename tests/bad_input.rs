@@ -21,7 +21,8 @@ let pair = still.pair(#{ width_px: 64, height_px: 64 });
 ";
 
 /// Files beside the script.
-const TABLES: [(&str, &str); 7] = [
+const TABLES: [(&str, &str); 8] = [
+    ("mph.csv", "x_mm,y_mm,u_mph,v_mph\n0,0,1,2\n"),
     ("empty.csv", ""),
     ("words.csv", "x,y,u,v\n0,0,1,2\n1,0,fast,4\n0,1,1,1\n"),
     (
@@ -305,17 +306,25 @@ const FOLDERS_AND_TABLES: &[Case] = &[
         1,
         "a script may not read ../../lost.rhai",
     ),
-    (
-        "read_vectors(\"absent.csv\");",
-        &[],
-        1,
-        "absent.csv cannot be read",
-    ),
+    ("read_vectors(\"absent.csv\");", &[], 1, "run/absent.csv"),
     (
         "read_vectors(\"empty.csv\");",
         &[],
         1,
         "empty.csv: holds no rows of numbers",
+    ),
+    ("read_vectors(\"word.csv\");", &[], 1, "there is no file "),
+    (
+        "read_table(\"word.csv\");",
+        &[],
+        1,
+        "word.csv; the nearest name there is words.csv",
+    ),
+    (
+        "read_vectors(\"mph.csv\");",
+        &[],
+        1,
+        "mph.csv: column u_mph is in \"mph\", which is not made of px, um, mm",
     ),
     (
         "read_vectors(\"words.csv\");",

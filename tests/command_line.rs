@@ -125,6 +125,38 @@ fn a_wrong_command_line_exits_with_2() {
 }
 
 #[test]
+fn a_script_in_place_of_a_command_is_recognised() {
+    let folder = folder_with("");
+    let output = kolk(folder.path(), &["a.rhai"]);
+    assert_eq!(output.status.code(), Some(2));
+    assert_eq!(
+        text(&output.stderr),
+        "error: there is no command `a.rhai`; did you mean `kolk run a.rhai`?\n"
+    );
+}
+
+#[test]
+fn a_recording_with_few_measured_vectors_is_noted_once() {
+    // 24 px a frame leave a window of 16 px: no pattern is found again.
+    let script = |speed: u32| {
+        format!(
+            "let p = uniform(#{{ u_px_per_frame: {speed}, v_px_per_frame: 0 }})\n\
+             .pair(#{{ width_px: 96, height_px: 96 }});\n\
+             for pair in [p, p] {{ pair.interrogate(plan(#{{ windows_px: [16], overlap: 0 }})); }}\n"
+        )
+    };
+    let folder = folder_with(&script(24));
+    let output = kolk(folder.path(), &["run", "a.rhai"]);
+    assert_eq!(output.status.code(), Some(0));
+    let shown = text(&output.stderr);
+    assert_eq!(shown.matches("note: ").count(), 1, "{shown}");
+    assert!(shown.contains("% of the vectors are measured;"), "{shown}");
+    let folder = folder_with(&script(2));
+    let output = kolk(folder.path(), &["run", "a.rhai"]);
+    assert_eq!(text(&output.stderr), "");
+}
+
+#[test]
 fn a_file_that_is_no_text_is_refused() {
     let folder = tempfile::tempdir().unwrap();
     std::fs::write(folder.path().join("a.rhai"), [0xff, 0xfe, 0x00]).unwrap();

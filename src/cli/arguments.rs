@@ -5,10 +5,11 @@ use std::path::PathBuf;
 use clap::{Args, Parser, Subcommand};
 
 const ABOUT: &str = "\
-kolk turns recordings of seeded, sheet-lit flow into eddy sizes, circulations and flow statistics
-that carry their uncertainty. It is for people who measure flow with a camera and a light sheet
-and have to defend the numbers: a small language over fast compiled kernels, at a prompt or in
-scripts that rebuild the same tables and figures later.";
+kolk turns recordings of seeded, sheet-lit flow into vectors, each with its standard uncertainty,
+and into eddy sizes, circulations and flow statistics. (How certain the numbers of an eddy are is
+not worked out yet; they print it as missing, \"± ?\".) It is for people who measure flow with a
+camera and a light sheet and have to defend the numbers: a small language over fast compiled
+kernels, at a prompt or in scripts that rebuild the same tables and figures later.";
 
 const AFTER: &str = "\
 An example, eddies.rhai:

@@ -13,6 +13,7 @@ use std::path::Path;
 use std::process::ExitCode;
 
 use clap::Parser;
+use clap::error::{ContextKind, ContextValue};
 
 use crate::script::{Sandbox, SandboxError, on_a_big_stack};
 use arguments::{Arguments, Command, Places};
@@ -49,6 +50,13 @@ pub fn main() -> ExitCode {
     let arguments = match Arguments::try_parse() {
         Ok(arguments) => arguments,
         Err(error) => {
+            if let Some(ContextValue::String(word)) = error.get(ContextKind::InvalidSubcommand)
+                && word.ends_with(".rhai")
+            {
+                let message =
+                    format!("there is no command `{word}`; did you mean `kolk run {word}`?");
+                return Terminal::new().misused(&message).into();
+            }
             // Help and version arrive here too; they print to standard output. A closed pipe is
             // no reason to fail.
             let _ = error.print();

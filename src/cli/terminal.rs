@@ -58,8 +58,10 @@ impl Terminal {
         Outcome::Misused
     }
 
-    /// The session, with a bar for long work where someone can see it.
+    /// The session, with its notes and, where someone can see it, a bar for long work.
     pub(crate) fn watching(&self, session: Session) -> Session {
+        let terminal = self.clone();
+        let session = session.noting(move |line| terminal.complain(&format!("note: {line}\n")));
         if !self.shows_progress {
             return session;
         }
@@ -83,6 +85,8 @@ impl Terminal {
 struct Bar {
     what: &'static str,
     total: usize,
+    /// Nothing is known of the time left before the first part is done.
+    counts_down: bool,
     drawn: ProgressBar,
 }
 
@@ -96,16 +100,12 @@ fn show_step(current: &mut Option<Bar>, step: &Step) {
         }
         let drawn =
             ProgressBar::with_draw_target(Some(step.total as u64), ProgressDrawTarget::stderr());
-        // The template is ours and right; a bar without it would do too.
-        if let Ok(style) =
-            ProgressStyle::with_template("{wide_bar:.cyan} {pos}/{len} {msg} {elapsed} left {eta}")
-        {
-            drawn.set_style(style.progress_chars("=- "));
-        }
+        give_style(&drawn, "");
         drawn.set_message(step.what);
         *current = Some(Bar {
             what: step.what,
             total: step.total,
+            counts_down: false,
             drawn,
         });
     }
@@ -114,8 +114,20 @@ fn show_step(current: &mut Option<Bar>, step: &Step) {
             bar.drawn.finish_and_clear();
             *current = None;
         } else {
+            if step.done > 0 && !bar.counts_down {
+                bar.counts_down = true;
+                give_style(&bar.drawn, " left {eta}");
+            }
             bar.drawn.set_position(step.done as u64);
         }
+    }
+}
+
+fn give_style(bar: &ProgressBar, end: &str) {
+    let template = format!("{{wide_bar:.cyan}} {{pos}}/{{len}} {{msg}} {{elapsed}}{end}");
+    // The template is ours and right; a bar without it would do too.
+    if let Ok(style) = ProgressStyle::with_template(&template) {
+        bar.set_style(style.progress_chars("=- "));
     }
 }
 

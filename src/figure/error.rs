@@ -10,7 +10,7 @@ use crate::store::StoreError;
 #[non_exhaustive]
 pub enum FigureError {
     /// No layer at all.
-    #[error("the figure is empty: give it something to draw, such as shade(field) or curve(...)")]
+    #[error("the figure is empty: give it something to draw, such as shade(field) or line(x, y)")]
     Empty,
     /// Layers, but not one finite value to draw or to take an axis from.
     #[error("there is nothing to draw: {0} holds no finite value")]

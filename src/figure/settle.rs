@@ -55,12 +55,11 @@ pub(crate) fn settle(figure: &Figure) -> Result<Settled<'_>, FigureError> {
         x.join(layer_x);
         y.join(layer_y);
     }
-    let drawn = layers.iter().filter(|l| l.units().is_some());
-    if drawn
-        .clone()
-        .all(|l| l.spans((false, false)).1.is_nothing())
-    {
-        let names: Vec<String> = drawn.map(Layer::name).collect();
+    let mut drawn = layers.iter().filter(|l| l.units().is_some());
+    if drawn.all(|l| l.spans((false, false)).1.is_nothing()) {
+        let names = names(layers).into_iter().zip(layers);
+        let drawn = names.filter(|(_, l)| l.units().is_some());
+        let names: Vec<String> = drawn.map(|(name, _)| name).collect();
         return Err(FigureError::NothingFinite(names.join(", ")));
     }
     if x.is_nothing() || y.is_nothing() {
@@ -89,19 +88,36 @@ pub(crate) fn settle(figure: &Figure) -> Result<Settled<'_>, FigureError> {
     })
 }
 
+/// What the layers are called in messages; a curve without a name by its number.
+fn names(layers: &[Layer]) -> Vec<String> {
+    let mut curves = 0;
+    let name = |layer: &Layer| {
+        curves += usize::from(layer.legend().is_some());
+        match layer.name() {
+            name if name.is_empty() => format!("curve {curves}"),
+            name => name,
+        }
+    };
+    layers.iter().map(name).collect()
+}
+
 fn common_units(layers: &[Layer]) -> Result<(Unit, Unit), FigureError> {
-    let mut found = layers.iter().filter_map(|l| Some((l, l.units()?)));
+    let names = names(layers);
+    let mut found = names
+        .iter()
+        .zip(layers)
+        .filter_map(|(name, l)| Some((name, l.units()?)));
     let Some((first, units)) = found.next() else {
         return Ok((Unit::ONE, Unit::ONE));
     };
-    for (layer, other) in found {
+    for (name, other) in found {
         for (axis, left, right) in [("x", units.0, other.0), ("y", units.1, other.1)] {
             if left != right {
                 return Err(FigureError::UnitsDiffer {
                     axis,
-                    first: first.name(),
+                    first: first.clone(),
                     left: UnitName(left),
-                    second: layer.name(),
+                    second: name.clone(),
                     right: UnitName(right),
                 });
             }

@@ -16,7 +16,7 @@ mod tiff;
 
 pub use error::FrameError;
 pub use frame::{Frame, Scale};
-pub use names::{matching_files, natural_order};
+pub use names::{matching_files, missing_file, natural_order};
 pub use pair::Pair;
 pub use read::{read_frames, read_page};
 pub use recording::{Order, Recording, RecordingOptions};

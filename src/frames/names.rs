@@ -28,7 +28,7 @@ pub fn matching_files(patterns: &[String], base: &Path) -> Result<Vec<PathBuf>, 
         let literal = base.join(pattern);
         if literal.is_file() || !pattern.contains(['*', '?', '[']) {
             if !literal.exists() {
-                return Err(missing(&literal));
+                return Err(missing_file(&literal));
             }
             seen.insert(literal.clone());
             files.push(literal);
@@ -112,7 +112,8 @@ fn compare_runs(a: &str, b: &str) -> Ordering {
     }
 }
 
-fn missing(file: &Path) -> FrameError {
+/// The error for a file that is not there, with the names nearest to its own.
+pub fn missing_file(file: &Path) -> FrameError {
     let name = file.file_name().unwrap_or_default().to_string_lossy();
     let folder = file.parent().unwrap_or(Path::new("."));
     FrameError::Missing {

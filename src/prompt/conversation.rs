@@ -7,9 +7,9 @@ use std::rc::Rc;
 
 use rustyline::error::ReadlineError;
 use rustyline::history::DefaultHistory;
-use rustyline::{CompletionType, Config, Editor};
+use rustyline::{CompletionType, Config, Editor, EventHandler, KeyEvent};
 
-use super::editing::{Editing, Names};
+use super::editing::{CancelUnfinished, Editing, Names};
 use crate::cli::{Outcome, Terminal, interrupt_flag, say};
 use crate::script::{Cells, Language, Sandbox, Session};
 
@@ -112,6 +112,8 @@ fn editor(names: Rc<RefCell<Names>>) -> rustyline::Result<Editor<Editing, Defaul
         .build();
     let mut editor = Editor::with_config(config)?;
     editor.set_helper(Some(Editing::new(names)));
+    let cancel = EventHandler::Conditional(Box::new(CancelUnfinished));
+    editor.bind_sequence(KeyEvent::ctrl('D'), cancel);
     Ok(editor)
 }
 

@@ -7,7 +7,7 @@ use rustyline::completion::Completer;
 use rustyline::highlight::Highlighter;
 use rustyline::hint::Hinter;
 use rustyline::validate::{ValidationContext, ValidationResult, Validator};
-use rustyline::{Context, Helper};
+use rustyline::{Cmd, ConditionalEventHandler, Context, Event, EventContext, Helper, RepeatCount};
 
 use crate::script::is_unfinished;
 
@@ -80,6 +80,22 @@ impl Validator for Editing {
         } else {
             ValidationResult::Valid(None)
         })
+    }
+}
+
+/// Ctrl-D at the end of a cell of several lines gives it up, as Ctrl-C does.
+pub(super) struct CancelUnfinished;
+
+impl ConditionalEventHandler for CancelUnfinished {
+    fn handle(
+        &self,
+        _: &Event,
+        _: RepeatCount,
+        _: bool,
+        context: &EventContext<'_>,
+    ) -> Option<Cmd> {
+        let line = context.line();
+        (line.contains('\n') && context.pos() == line.len()).then_some(Cmd::Interrupt)
     }
 }
 

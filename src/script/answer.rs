@@ -4,7 +4,7 @@ use std::sync::Arc;
 
 use rhai::{Array, Dynamic, Map};
 
-use super::argument::list_of;
+use super::argument::{NumberOr, list_of};
 use super::fault::Fault;
 use super::kind::Kind;
 
@@ -63,6 +63,19 @@ impl<T: Kind> Answer for Arc<T> {
 
     fn give(self) -> Result<Dynamic, Fault> {
         Ok(Dynamic::from(self))
+    }
+}
+
+impl<T: Kind> Answer for NumberOr<T> {
+    fn kind() -> String {
+        format!("number or {}", T::NAME)
+    }
+
+    fn give(self) -> Result<Dynamic, Fault> {
+        match self {
+            NumberOr::Number(x) => x.give(),
+            NumberOr::Other(held) => held.give(),
+        }
     }
 }
 

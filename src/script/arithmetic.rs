@@ -154,8 +154,9 @@ fn power(a: Plain, b: Plain) -> Result<Dynamic, Fault> {
     }
     let result = base.powf(exponent);
     if result.is_nan() && !base.is_nan() && !exponent.is_nan() {
+        // Without brackets the minus sign would be outside the power.
         return Err(Fault::new(format!(
-            "{} ** {} is not a real number",
+            "({}) ** {} is not a real number",
             number_text(base),
             number_text(exponent)
         )));
@@ -178,6 +179,10 @@ pub(super) fn register(engine: &mut Engine) {
         });
         changing(engine, "%", types, |a, b| {
             remainder(Plain::of(a), Plain::of(b))
+        });
+        changing(engine, "|", types, |_, _| {
+            let message = "`|` does not go between a number and a number";
+            Err(Fault::new(message).hint("conditions are joined with `||`"))
         });
         comparing(engine, "==", types, |o| o == Some(Ordering::Equal));
         comparing(engine, "!=", types, |o| o != Some(Ordering::Equal));

@@ -6,6 +6,7 @@ use std::rc::Rc;
 use super::fault::Fault;
 use super::registry::Registry;
 use super::session::Session;
+use crate::frames::missing_file;
 use crate::task::Task;
 
 /// Given to a built-in that asks for it: progress, cancellation, files, and what may be printed.
@@ -46,6 +47,19 @@ impl Call {
     /// A path outside the folders a script may read.
     pub fn readable(&self, path: &str) -> Result<PathBuf, Fault> {
         Ok(self.session.sandbox().readable(Path::new(path))?)
+    }
+
+    /// The path to read the file `path` from, which is there.
+    ///
+    /// # Errors
+    /// As [`Call::readable`]; a file that does not exist, with the names nearest to it.
+    pub fn existing(&self, path: &str) -> Result<PathBuf, Fault> {
+        let full = self.readable(path)?;
+        if full.exists() {
+            Ok(full)
+        } else {
+            Err(missing_file(&full).into())
+        }
     }
 
     /// Lets `write` write the file (or folder) `path`, with the folder it goes to made; once it

@@ -233,6 +233,7 @@ pub(super) fn with_article(kind: &str) -> String {
         "text",
         "true",
         "nothing",
+        "eddies",
         "numbers",
         "one of",
         "anything",

@@ -18,6 +18,7 @@ use super::record::Form;
 use super::registry::Registry;
 use super::session::Session;
 use super::settings::{DeclaredSetting, declared};
+use super::signs;
 use super::trouble::Trouble;
 
 /// Functions may call one another this deep; the stack of [`on_a_big_stack`] holds that.
@@ -175,6 +176,7 @@ pub(super) fn bare_engine() -> Engine {
     engine.set_max_map_size(LARGEST.2);
     engine.set_optimization_level(rhai::OptimizationLevel::None);
     arithmetic::register(&mut engine);
+    signs::register(&mut engine);
     print_plain_values(&mut engine);
     name_plain_kinds(&mut engine);
     engine.set_fail_on_invalid_map_property(true);

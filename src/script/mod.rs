@@ -12,7 +12,7 @@
 //! | `record`, `registry`, `draft` | built-ins as records, how they are written and found |
 //! | `kind`, `argument`, `answer`, `bind_fn` | values of the language as Rust sees them |
 //! | `options` | option maps as documented structs |
-//! | `arithmetic`, `number` | what `/`, `==`, `**` mean, and how a number prints |
+//! | `arithmetic`, `signs`, `number` | what `/`, `==`, `**`, `-x ** 2` mean, and how a number prints |
 //! | `fault`, `wording`, `trouble` | errors: ours, the engine's in our words, and their display |
 //! | `session`, `sandbox`, `settings` | what a run may read, write and be told |
 //! | `language`, `cells`, `modules` | running files, cells of a prompt, and imports |
@@ -38,6 +38,7 @@ mod registry;
 mod sandbox;
 mod session;
 mod settings;
+mod signs;
 mod sources;
 mod trouble;
 mod unfinished;

@@ -6,7 +6,7 @@ use serde::de::DeserializeOwned;
 use serde_json::Value;
 
 use super::fault::Fault;
-use super::kind::{kind_name, with_article};
+use super::kind::{kind_name, number, with_article};
 use super::number::number_text;
 use super::wording::nearest;
 
@@ -194,6 +194,12 @@ fn refused(key: &str, value: Option<&Dynamic>, keys: &[OptionKey], said: &str) -
         return Fault::new(format!("option `{key}`: {said}")).at_key(key);
     }
     let fault = wrong_kind(key, keys, &shown(value));
+    let takes_a_list = keys
+        .iter()
+        .any(|k| k.name == key && k.kind.starts_with("list of"));
+    if takes_a_list && number(value).is_some() {
+        return fault.hint(format!("write it as a list: [{}]", shown(value)));
+    }
     let words = wanted(key, keys);
     let words = words.split('"').skip(1).step_by(2);
     match value
@@ -210,7 +216,9 @@ fn unknown(key: &str, keys: &[OptionKey]) -> Fault {
     let names = keys.iter().map(|k| k.name);
     let list = names.clone().collect::<Vec<_>>().join(", ");
     let fault = Fault::new(format!("there is no option `{key}`")).at_key(key);
-    match nearest(key, names) {
+    // The unit at the end of a key is what is forgotten first.
+    let longer = |name: &&str| name.strip_prefix(key).is_some_and(|r| r.starts_with('_'));
+    match names.clone().find(longer).or_else(|| nearest(key, names)) {
         Some(name) => fault.hint(format!("did you mean `{name}`? The options are: {list}")),
         None => fault.hint(format!("the options are: {list}")),
     }
@@ -406,6 +414,20 @@ mod tests {
         assert_eq!(
             fault.hint_text(),
             Some("did you mean `overlap`? The options are: windows_px, overlap, scheme")
+        );
+    }
+
+    #[test]
+    fn a_key_without_its_unit_and_a_list_of_one_are_recognised() {
+        let hint = |text| read_text(text).unwrap_err().hint_text().map(str::to_owned);
+        let nearest = hint("#{windows: [64]}").unwrap();
+        assert!(
+            nearest.starts_with("did you mean `windows_px`?"),
+            "{nearest}"
+        );
+        assert_eq!(
+            hint("#{windows_px: 48}").as_deref(),
+            Some("write it as a list: [48]")
         );
     }
 

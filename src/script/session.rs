@@ -1,5 +1,7 @@
 //! One run of the language: where it prints, what it may touch, whether it was interrupted.
 
+use std::cell::RefCell;
+use std::collections::HashSet;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
 
@@ -20,6 +22,8 @@ pub struct Session {
     sandbox: Sandbox,
     settings: Settings,
     sink: Sink,
+    notes: Sink,
+    noted: RefCell<HashSet<String>>,
     pub(super) sources: Sources,
 }
 
@@ -32,6 +36,8 @@ impl Session {
             sandbox,
             settings: Settings::default(),
             sink: Box::new(sink),
+            notes: Box::new(|_| ()),
+            noted: RefCell::default(),
             sources: Sources::default(),
         }
     }
@@ -45,6 +51,12 @@ impl Session {
     /// The same with the progress of long work sent to `report`.
     pub fn reporting(mut self, report: impl Fn(Step) + Send + Sync + 'static) -> Self {
         self.progress = Some(Arc::new(report));
+        self
+    }
+
+    /// The same with notes sent to `note`, one line at a time.
+    pub fn noting(mut self, note: impl Fn(&str) + 'static) -> Self {
+        self.notes = Box::new(note);
         self
     }
 
@@ -69,6 +81,13 @@ impl Session {
         (self.sink)(line);
     }
 
+    /// Says something beside the results that is no error, once for each `subject` in a run.
+    pub fn note(&self, subject: &str, line: &str) {
+        if self.noted.borrow_mut().insert(subject.to_owned()) {
+            (self.notes)(line);
+        }
+    }
+
     /// The flag an interrupt sets.
     pub fn cancel_flag(&self) -> Arc<AtomicBool> {
         Arc::clone(&self.cancel)
@@ -79,8 +98,9 @@ impl Session {
         self.cancel.load(Ordering::Relaxed)
     }
 
-    /// Forgets an interrupt, so that the next cell can run.
+    /// Forgets an interrupt and what was noted, so that the next cell can run.
     pub fn go_on(&self) {
+        self.noted.borrow_mut().clear();
         self.cancel.store(false, Ordering::Relaxed);
     }
 

@@ -2,7 +2,7 @@
 
 use std::sync::Arc;
 
-use rhai::{EvalAltResult, LexError, ParseErrorType};
+use rhai::{EvalAltResult, LexError, ParseErrorType, Position};
 
 use super::fault::Fault;
 use super::kind::{PLAIN_KINDS, show, with_article};
@@ -74,8 +74,11 @@ pub(super) fn say(
             None if thrown.is_string() => Wording::new(thrown.to_string()),
             None => Wording::new(format!("the script threw {}", show(thrown))),
         },
-        E::ErrorParsing(kind, _) => parsing(kind),
-        E::ErrorVariableNotFound(name, _) => variable(name, registry, names),
+        E::ErrorParsing(kind, position) => parsing(kind, text, *position),
+        E::ErrorVariableNotFound(name, position) => {
+            let set_to = set_to(name, text, *position);
+            variable(name, registry, names, set_to)
+        }
         E::ErrorFunctionNotFound(signature, _) => function(signature, registry, names),
         E::ErrorDotExpr(text, _) => property(text, registry),
         E::ErrorIndexingType(text, _) => indexing(text),
@@ -128,12 +131,47 @@ pub(super) fn say(
     }
 }
 
-fn variable(name: &str, registry: &Registry, names: &[String]) -> Wording {
+/// What stands before and from this position on.
+fn split_at(text: &str, position: Position) -> Option<(&str, &str)> {
+    let line = position.line()?;
+    let column = position.position().unwrap_or(1);
+    let start: usize = text
+        .split_inclusive('\n')
+        .take(line - 1)
+        .map(str::len)
+        .sum();
+    let inside = text
+        .get(start..)?
+        .char_indices()
+        .nth(column.checked_sub(1)?)?
+        .0;
+    text.split_at_checked(start + inside)
+}
+
+/// What the variable is set to, where the position is that of `name = value`.
+fn set_to<'a>(name: &str, text: &'a str, position: Position) -> Option<&'a str> {
+    let (_, rest) = split_at(text, position)?;
+    let value = rest.strip_prefix(name)?.trim_start().strip_prefix('=')?;
+    let value = value.split([';', '\n']).next().unwrap_or_default();
+    (!value.starts_with('=')).then_some(value.trim())
+}
+
+fn variable(name: &str, registry: &Registry, names: &[String], set_to: Option<&str>) -> Wording {
     let wording = Wording::new(format!("there is no variable `{name}`"));
     if names.iter().any(|n| n == name) {
         return wording.hint(format!(
             "`{name}` exists outside this function, and a function sees only its parameters: pass it in"
         ));
+    }
+    if let Some(value) = set_to {
+        let meant = nearest(name, names.iter().map(String::as_str));
+        let meant = meant.map_or(String::new(), |near| format!(", or did you mean `{near}`?"));
+        let value = if (1..=30).contains(&value.len()) {
+            value
+        } else {
+            "..."
+        };
+        return wording.hint(format!("write `let {name} = {value}`{meant}"));
     }
     let belongs = registry
         .named(name)
@@ -168,6 +206,9 @@ fn function(signature: &str, registry: &Registry, names: &[String]) -> Wording {
         return operator(name, &given);
     }
     let short = name.rsplit("::").next().unwrap_or(name);
+    if short == "range" {
+        return Wording::new("there is no function `range`").hint("`for i in 0..3 { ... }`");
+    }
     let records = registry.named(short);
     let phrase = given
         .iter()
@@ -200,8 +241,17 @@ fn function(signature: &str, registry: &Registry, names: &[String]) -> Wording {
             } else {
                 phrase
             };
-            Wording::new(format!("`{short}` does not take {phrase}"))
-                .hint(format!("it is: {}", usages.join(", ")))
+            let wording = Wording::new(format!("`{short}` does not take {phrase}"));
+            // What cannot be saved itself may have a table that can.
+            let kind = given.first().map(String::as_str).unwrap_or_default();
+            let has_table = registry
+                .belonging_to(kind)
+                .iter()
+                .any(|r| r.name == "table");
+            if short == "save" && has_table {
+                return wording.hint("`.table().save(...)` saves the numbers");
+            }
+            wording.hint(format!("it is: {}", usages.join(", ")))
         }
     }
 }
@@ -222,17 +272,27 @@ fn arity(record: &Record, given: usize) -> Wording {
         return Wording::new(format!("`{}` is not called", record.name))
             .hint(format!("write it without brackets: {}", record.usage()));
     }
+    if record.name == "print" {
+        return Wording::new(format!("`print` takes {wanted}, not {given}"))
+            .hint("one text in backticks holds several: print(`${a} and ${b}`)");
+    }
     Wording::new(format!("`{}` takes {wanted}, not {given}", record.name))
         .hint(format!("it is: {}", record.usage()))
 }
 
 fn operator(name: &str, given: &[String]) -> Wording {
     let phrase = given.iter().map(|k| with_article(k)).collect::<Vec<_>>();
-    Wording::new(match phrase.as_slice() {
+    let wording = Wording::new(match phrase.as_slice() {
         [one] => format!("`{name}` does not go with {one}"),
         [left, right] => format!("`{name}` does not go between {left} and {right}"),
         _ => format!("there is no operator `{name}`"),
-    })
+    });
+    let kinds: Vec<&str> = given.iter().map(String::as_str).collect();
+    match kinds.as_slice() {
+        ["list", "number"] => wording.hint(format!("`.map(|v| v {name} 2)` goes item by item")),
+        ["number", "list"] => wording.hint(format!("`.map(|v| 2 {name} v)` goes item by item")),
+        _ => wording,
+    }
 }
 
 /// `Unknown property 'x' - a getter is not registered for type 'y'`.
@@ -346,9 +406,29 @@ fn too_large(what: &str) -> Wording {
     Wording::new(format!("the {what} grew past what a script may hold"))
 }
 
-fn parsing(kind: &ParseErrorType) -> Wording {
+/// True where the position is that of the colon in `({ key: value`.
+fn is_bare_map(text: &str, position: Position) -> bool {
+    let Some((before, rest)) = split_at(text, position) else {
+        return false;
+    };
+    let mut open = 0;
+    let brace = before.char_indices().rev().find(|(_, c)| {
+        open += i32::from(*c == '}') - i32::from(*c == '{');
+        open < 0
+    });
+    let outside = brace.map(|(i, _)| before[..i].trim_end());
+    rest.starts_with(':') && outside.is_some_and(|o| o.ends_with(['(', ',', '=', ':', '[']))
+}
+
+fn parsing(kind: &ParseErrorType, text: &str, position: Position) -> Wording {
     use ParseErrorType as P;
     match kind {
+        P::MissingToken(..) if is_bare_map(text, position) => {
+            Wording::new("`{` begins a block here, not a map")
+                .hint("options begin with `#{`: #{ key: value }")
+        }
+        P::BadInput(LexError::MalformedChar(_)) => Wording::new("single quotes hold one character")
+            .hint("text stands in double quotes: \"so\""),
         P::UnexpectedEOF => {
             Wording::new("the script ends too early").hint("something opened was not closed")
         }

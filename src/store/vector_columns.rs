@@ -66,6 +66,9 @@ impl VectorColumns {
     fn named(names: &[&str]) -> Result<Self, Problem> {
         let need = |keys: &[&str]| -> Result<Found, Problem> {
             find(names, keys)?.ok_or_else(|| {
+                if let Some((name, unit)) = with_unknown_unit(names, keys) {
+                    return unknown_unit(name, unit);
+                }
                 Problem::whole(format!(
                     "has no column {}; its columns are {}",
                     keys[0],
@@ -143,6 +146,25 @@ fn units(length: Option<Unit>, velocity: Option<Unit>) -> Result<(Unit, Unit), P
     }
 }
 
+fn unknown_unit(name: &str, unit: &str) -> Problem {
+    Problem::whole(format!(
+        "column {name} is in \"{unit}\", which is not made of px, um, mm, cm, m, frame, us, ms, s \
+         or deg"
+    ))
+}
+
+/// The column that would have one of these names if what follows it were a unit.
+fn with_unknown_unit<'a>(names: &[&'a str], keys: &[&str]) -> Option<(&'a str, &'a str)> {
+    keys.iter().find_map(|key| {
+        names.iter().find_map(|name| {
+            let name = name.trim();
+            let (start, unit) = name.split_once(['_', ' '])?;
+            let fits = start.eq_ignore_ascii_case(key) && !unit.starts_with("unc");
+            fits.then_some((name, unit))
+        })
+    })
+}
+
 /// The column with one of these names, bare or followed by its unit: `x_mm`, `x [mm]`, `x (mm)`.
 fn find(names: &[&str], keys: &[&str]) -> Result<Option<Found>, Problem> {
     for key in keys {
@@ -164,13 +186,7 @@ fn find(names: &[&str], keys: &[&str]) -> Result<Option<Found>, Problem> {
             match Unit::parse(unit) {
                 Some(unit) if !unit.is_one() => return Ok(Some((place, Some(unit)))),
                 Some(_) => return Ok(Some((place, None))),
-                None if bracketed => {
-                    return Err(Problem::whole(format!(
-                        "column {} is in \"{unit}\", which is not made of px, um, mm, cm, m, \
-                         frame, us, ms, s or deg",
-                        names[place]
-                    )));
-                }
+                None if bracketed => return Err(unknown_unit(names[place], unit)),
                 None => {}
             }
         }

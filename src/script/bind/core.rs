@@ -6,7 +6,7 @@ use super::super::call::Call;
 use super::super::draft::Room;
 use super::super::fault::Fault;
 use super::super::help::{Help, help_for, kind_page, overview};
-use super::super::kind::{Subject, kind_name, number, show};
+use super::super::kind::{Subject, kind_name, show, with_article};
 use super::super::registry::Registry;
 
 /// Writes the records.
@@ -167,8 +167,8 @@ fn help(about: Option<Dynamic>, call: &Call) -> Help {
     match registry.kind(kind_name(&about)) {
         Some(kind) => kind_page(registry, kind),
         None => Help(format!(
-            "A {}; nothing more is written about it.",
-            kind_name(&about)
+            "This is {}; nothing more is written about it.",
+            with_article(kind_name(&about))
         )),
     }
 }
@@ -199,19 +199,4 @@ impl Subject for bool {
     fn lend<R>(value: &Dynamic, f: impl FnOnce(&Self) -> R) -> Option<R> {
         value.as_bool().ok().map(|b| f(&b))
     }
-}
-
-/// The numbers in a list.
-pub(super) fn numbers(list: &rhai::Array) -> Result<Vec<f64>, Fault> {
-    list.iter()
-        .enumerate()
-        .map(|(i, item)| {
-            number(item).ok_or_else(|| {
-                Fault::new(format!(
-                    "item {i} of the list is a {}, not a number",
-                    kind_name(item)
-                ))
-            })
-        })
-        .collect()
 }

@@ -10,6 +10,7 @@ use super::super::kind::Kind;
 use super::super::options::Optional;
 use super::super::wording::nearest;
 use super::place::{Length, Point};
+use super::table::table_name;
 use crate::field::{Gradient, ScalarField, Scheme, Status, Trace, VectorField};
 use crate::quantity::{Measured, Unit, plain_number};
 use crate::store::{read_vectors, save_vectors};
@@ -225,10 +226,10 @@ fn files(room: &mut Room) {
         )
         .words("write export csv file table")
         .input("file", "", "file name, below the output folder")
-        .errors("the file cannot be written")
+        .errors("the name does not end in .csv, .txt or .dat, or the file cannot be written")
         .example(with_a_flow!("flow.save(\"flow.csv\")"), "")
         .does(|flow: &VectorField, file: String, call: Call| {
-            call.write(&file, |path| save_vectors(flow, path))
+            call.write(table_name(&file)?, |path| save_vectors(flow, path))
         });
     room.function("read_vectors")
         .about(
@@ -244,7 +245,7 @@ fn files(room: &mut Room) {
             "1089",
         )
         .does(|file: String, call: Call| {
-            let path = call.readable(&file)?;
+            let path = call.existing(&file)?;
             Ok::<_, Fault>(read_vectors(&path)?)
         });
 }

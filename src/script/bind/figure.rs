@@ -10,6 +10,7 @@ use super::super::kind::Kind;
 use super::super::options::Optional;
 use super::field::quantity;
 use super::quantity::unit;
+use super::values::AlongAxis;
 use super::vortex::{Found, FoundEddies};
 use crate::field::{ScalarField, Trace, VectorField};
 use crate::figure::{
@@ -51,9 +52,10 @@ crate::options! {
     pub(super) struct CurveOptions {
         name: String = String::new(), "text", "", "What it is called in the key.";
         x_name: String = String::new(), "text", "", "What x is.";
-        x_unit: String = String::new(), "text", "", "Unit of x, such as \"mm\".";
-        y_unit: String = String::new(), "text", "", "Unit of y, such as \"mm/s\".";
-        band: Vec<f64> = Vec::new(), "list of numbers", "that of y", "Half width of the band or bar at each point.";
+        y_name: String = String::new(), "text", "", "What y is; left out, the name.";
+        x_unit: String = String::new(), "text", "", "Unit of x, such as \"mm\"; left out, that of the measured values.";
+        y_unit: String = String::new(), "text", "", "Unit of y, such as \"mm/s\"; left out, that of the measured values.";
+        band: Vec<f64> = Vec::new(), "list of numbers", "that of y", "Half width of the band or bar at each point; left out, the standard uncertainty where every y has one.";
     }
 }
 
@@ -117,38 +119,52 @@ fn maps(room: &mut Room) {
         });
 }
 
-fn curve(x: Vec<f64>, y: Vec<f64>, options: &CurveOptions) -> Result<Curve, Fault> {
-    let (x_unit, y_unit) = (unit(&options.x_unit)?, unit(&options.y_unit)?);
-    let curve = Curve::new(&options.name, x, y)
-        .units(x_unit, y_unit)
+fn curve(x: &AlongAxis, y: &AlongAxis, options: &CurveOptions) -> Result<Curve, Fault> {
+    let x = x.in_unit_named(&options.x_unit)?;
+    let y = y.in_unit_named(&options.y_unit)?;
+    let curve = Curve::new(&options.name, x.values, y.values)
+        .units(x.unit, y.unit)
         .x_name(&options.x_name);
-    Ok(if options.band.is_empty() {
-        curve
-    } else {
+    Ok(if !options.band.is_empty() {
         curve.band(options.band.clone())
+    } else if let Some(unc) = y.unc {
+        curve.band(unc)
+    } else {
+        curve
     })
+}
+
+/// The figure with what the options say of its y axis.
+fn with_y_name(figure: Figure, options: &CurveOptions) -> Figure {
+    if options.y_name.is_empty() {
+        figure
+    } else {
+        figure.y_label(&options.y_name)
+    }
 }
 
 fn curves(room: &mut Room) {
     room.method::<Figure>("line")
-        .about("Draws a curve through points, with a band where one is given.")
+        .about("Draws a curve through points, with a band where one is given or every y has its uncertainty; () leaves a gap.")
         .words("plot graph curve xy")
-        .input("x", "as x_unit says", "abscissae")
-        .input("y", "as y_unit says", "ordinates, as many")
-        .errors("a unit is not known")
+        .input("x", "as x_unit says, or its own", "abscissae: numbers or measured values")
+        .input("y", "as y_unit says, or its own", "ordinates, as many: numbers or measured values")
+        .errors("a unit is not known, units measure different things, or a list mixes numbers and measured values")
         .example("figure().line([0, 1, 2], [1, 0.8, 0.7], #{ name: \"decay\", x_unit: \"s\" }).save(\"decay.svg\")", "")
-        .does(|figure: &Figure, x: Vec<f64>, y: Vec<f64>, options: Optional<CurveOptions>| {
-            Ok::<_, Fault>(figure.clone().line(curve(x, y, &options.0)?))
+        .does(|figure: &Figure, x: AlongAxis, y: AlongAxis, options: Optional<CurveOptions>| {
+            let curve = curve(&x, &y, &options.0)?;
+            Ok::<_, Fault>(with_y_name(figure.clone().line(curve), &options.0))
         });
     room.method::<Figure>("points")
-        .about("Draws points, with upright bars where a band is given.")
+        .about("Draws points, with upright bars where a band is given or every y has its uncertainty; () leaves one out.")
         .words("plot scatter dots markers error bars")
-        .input("x", "as x_unit says", "abscissae")
-        .input("y", "as y_unit says", "ordinates, as many")
-        .errors("a unit is not known")
+        .input("x", "as x_unit says, or its own", "abscissae: numbers or measured values")
+        .input("y", "as y_unit says, or its own", "ordinates, as many: numbers or measured values")
+        .errors("a unit is not known, units measure different things, or a list mixes numbers and measured values")
         .example("figure().points([0, 1, 2], [1, 0.8, 0.7], #{ band: [0.1, 0.1, 0.1] }).save(\"points.svg\")", "")
-        .does(|figure: &Figure, x: Vec<f64>, y: Vec<f64>, options: Optional<CurveOptions>| {
-            Ok::<_, Fault>(figure.clone().points(curve(x, y, &options.0)?))
+        .does(|figure: &Figure, x: AlongAxis, y: AlongAxis, options: Optional<CurveOptions>| {
+            let curve = curve(&x, &y, &options.0)?;
+            Ok::<_, Fault>(with_y_name(figure.clone().points(curve), &options.0))
         });
     room.method::<Figure>("trace")
         .about("Draws values along a line through a field against the distance along it.")

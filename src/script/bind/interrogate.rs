@@ -10,6 +10,7 @@ use super::super::fault::Fault;
 use super::super::kind::Kind;
 use super::super::options::Optional;
 use super::vortex::FoundEddies;
+use crate::field::{Status, VectorField};
 use crate::frames::{Pair, Recording};
 use crate::interrogate::{Plan, PlanOptions, interrogate};
 use crate::series::{Series, default_name, interrogate_series};
@@ -104,7 +105,12 @@ pub(super) fn records(room: &mut Room) {
             "\"2.0\"",
         )
         .does(|pair: &Pair, plan: Option<Arc<Plan>>, call: Call| {
-            interrogate(pair, &*given(plan)?, &call.task()).map_err(Fault::from)
+            let field = interrogate(pair, &*given(plan)?, &call.task())?;
+            // The pairs of a recording differ in the numbers of their names.
+            let without_digits = |c: &char| !c.is_ascii_digit();
+            let recording: String = pair.label().chars().filter(without_digits).collect();
+            note_poor_yield(std::slice::from_ref(&field), &recording, &call);
+            Ok::<_, Fault>(field)
         });
     room.method::<Recording>("interrogate")
         .about(
@@ -139,10 +145,35 @@ pub(super) fn records(room: &mut Room) {
         )
         .does(
             |recording: &Recording, plan: Option<Arc<Plan>>, folder: Option<String>, call: Call| {
-                series(recording, &*given(plan)?, folder, &call)
+                let all = series(recording, &*given(plan)?, folder, &call)?;
+                if all.len() > 0 {
+                    // One pair says whether the order and the windows are right.
+                    let files = recording.files().iter().map(|f| f.to_string_lossy());
+                    let name = files.collect::<Vec<_>>().join(" ");
+                    note_poor_yield(std::slice::from_ref(&all.field(0)?), &name, &call);
+                }
+                Ok::<_, Fault>(all)
             },
         );
     of_series(room);
+}
+
+/// Below this share of measured vectors something is likely to be wrong with the settings. Common
+/// practice, no source.
+const POOR_YIELD: f64 = 0.7;
+
+fn note_poor_yield(fields: &[VectorField], recording: &str, call: &Call) {
+    let count = |status| fields.iter().map(|f| f.count(status)).sum::<usize>();
+    let measured = count(Status::Measured);
+    let all = measured + count(Status::Replaced);
+    if (measured as f64) < POOR_YIELD * all as f64 {
+        let percent = 100 * measured / all;
+        let note = format!(
+            "{percent} % of the vectors are measured; is the order \"pairs\" or \"series\" right, \
+             and the window large enough for the motion?"
+        );
+        call.session().note(recording, &note);
+    }
 }
 
 fn given(plan: Option<Arc<Plan>>) -> Result<Arc<Plan>, Fault> {

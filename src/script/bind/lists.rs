@@ -1,11 +1,13 @@
 //! Lists and text: what the engine brings along, and what a table of results needs besides.
 
+use std::cmp::Ordering;
+
 use rhai::{Array, Dynamic, Map};
 
 use super::super::draft::Room;
 use super::super::fault::Fault;
 use super::super::kind::show;
-use super::core::numbers;
+use super::values::Values;
 
 /// Writes the records.
 pub(super) fn records(room: &mut Room) {
@@ -21,41 +23,62 @@ pub(super) fn records(room: &mut Room) {
 }
 
 fn of_lists(room: &mut Room) {
+    let units = "the units measure different things, or an item is neither";
     room.method::<Array>("sum")
-        .about("The sum of a list of numbers; 0 for an empty list.")
+        .about("The sum of a list of numbers or of measured values; 0 for an empty list.")
         .words("total add")
-        .unit("that of the numbers")
-        .errors("an item is not a number")
+        .unit("that of the items")
+        .errors(units)
+        .source("JCGM 100:2008 (GUM), 5.2.2, for measured values")
         .example("[1, 2, 3.5].sum()", "6.5")
-        .does(|list: &Array| numbers(list).map(|x| x.iter().sum::<f64>()));
+        .example(
+            "[measured(3, 0.3, \"mm\"), measured(4, 0.4, \"mm\")].sum()",
+            "7.0 ± 0.5 mm",
+        )
+        .does(|list: &Array| Values::of(list)?.sum());
     room.method::<Array>("mean")
-        .about("The mean of a list of numbers.")
+        .about(
+            "The mean of a list of numbers or of measured values. The uncertainty of a mean is \
+             what the values' own say, missing where one of theirs is; how far they scatter is \
+             `spread`.",
+        )
         .words("average")
-        .unit("that of the numbers")
-        .errors("the list is empty or an item is not a number")
+        .unit("that of the items")
+        .errors("the list is empty, the units measure different things, or an item is neither")
+        .source("JCGM 100:2008 (GUM), 5.2.2, for measured values")
         .example("[1, 2, 6].mean()", "3")
-        .does(|list: &Array| {
-            let x = some_numbers(list)?;
-            Ok::<_, Fault>(x.iter().sum::<f64>() / x.len() as f64)
-        });
+        .example(
+            "[measured(3, 0.3, \"mm\"), measured(4, 0.4, \"mm\")].mean()",
+            "3.50 ± 0.25 mm",
+        )
+        .does(|list: &Array| Values::some_of(list)?.mean());
+    room.method::<Array>("spread")
+        .about(
+            "The sample standard deviation of a list of numbers or of measured values: the root \
+             of the squared deviations from the mean over the count less one. It says how far \
+             the values scatter; how well it does so itself is not worked out.",
+        )
+        .words("standard deviation scatter variance")
+        .unit("that of the items")
+        .errors("there are fewer than two items, the units measure different things, or an item is neither")
+        .source("JCGM 100:2008 (GUM), 4.2.2")
+        .example("[2, 4, 9].spread() ** 2", "13")
+        .example("[exact(1, \"mm\"), exact(3, \"mm\")].spread()", "1.414 ± ? mm")
+        .does(|list: &Array| Values::of(list)?.spread());
     room.method::<Array>("min")
-        .about("The smallest number of a list.")
+        .about("The smallest of a list of numbers or of measured values.")
         .words("least smallest")
-        .unit("that of the numbers")
-        .errors("the list is empty or an item is not a number")
+        .unit("that of the items")
+        .errors("the list is empty, the units measure different things, or an item is neither")
         .example("[3, 1, 2].min()", "1")
-        .does(|list: &Array| {
-            some_numbers(list).map(|x| x.into_iter().fold(f64::INFINITY, f64::min))
-        });
+        .does(|list: &Array| Values::some_of(list)?.extreme(Ordering::Less));
     room.method::<Array>("max")
-        .about("The largest number of a list.")
+        .about("The greatest of a list of numbers or of measured values.")
         .words("greatest largest")
-        .unit("that of the numbers")
-        .errors("the list is empty or an item is not a number")
+        .unit("that of the items")
+        .errors("the list is empty, the units measure different things, or an item is neither")
         .example("[3, 1, 2].max()", "3")
-        .does(|list: &Array| {
-            some_numbers(list).map(|x| x.into_iter().fold(f64::NEG_INFINITY, f64::max))
-        });
+        .does(|list: &Array| Values::some_of(list)?.extreme(Ordering::Greater));
     room.method::<Array>("join")
         .about("The items as one text, with a separator between them.")
         .words("concatenate text list print")
@@ -84,13 +107,6 @@ fn of_lists(room: &mut Room) {
             let at = |i: usize| from + (to - from) * (i as f64 / last);
             Ok((0..count).map(at).collect::<Vec<f64>>())
         });
-}
-
-fn some_numbers(list: &Array) -> Result<Vec<f64>, Fault> {
-    match numbers(list)? {
-        x if x.is_empty() => Err(Fault::new("the list is empty")),
-        x => Ok(x),
-    }
 }
 
 /// Records of what the engine brings along.

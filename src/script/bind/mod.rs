@@ -15,6 +15,7 @@ mod place;
 mod quantity;
 mod synth;
 mod table;
+mod values;
 mod vortex;
 
 use super::draft::Room;

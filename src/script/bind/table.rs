@@ -1,5 +1,6 @@
 //! Tables.
 
+use std::path::Path;
 use std::sync::Arc;
 
 use rhai::{Array, Dynamic};
@@ -251,14 +252,36 @@ fn cell(cell: &Cell) -> Dynamic {
     }
 }
 
+/// The name of a file that is to hold a table as text.
+pub(super) fn table_name(file: &str) -> Result<&str, Fault> {
+    let ending = Path::new(file.trim()).extension();
+    let ending = ending.map(|e| e.to_string_lossy().to_lowercase());
+    // A name that is empty is refused as that.
+    match ending.as_deref() {
+        Some("csv" | "txt" | "dat") => Ok(file),
+        _ if file.trim().is_empty() => Ok(file),
+        Some("svg" | "png") => Err(wrong_ending(file)
+            .hint("a picture is drawn first: figure().arrows(field).save(...), figure().line(x, y).save(...)")),
+        _ => Err(wrong_ending(file)),
+    }
+}
+
+fn wrong_ending(file: &str) -> Fault {
+    Fault::new(format!(
+        "columns of numbers do not go into {file}: end the name in .csv, .txt or .dat"
+    ))
+}
+
 fn files(room: &mut Room) {
     room.method::<Table>("save")
         .about("Writes the table as CSV.")
         .words("write export csv file")
         .input("file", "", "file name, below the output folder")
-        .errors("the file cannot be written")
+        .errors("the name does not end in .csv, .txt or .dat, or the file cannot be written")
         .example(with_a_table!("t.save(\"widths.csv\")"), "")
-        .does(|table: &Table, file: String, call: Call| call.write(&file, |path| table.save(path)));
+        .does(|table: &Table, file: String, call: Call| {
+            call.write(table_name(&file)?, |path| table.save(path))
+        });
     room.function("read_table")
         .about("The table in a CSV file whose first line holds the headings.")
         .words("open load import csv file")
@@ -269,7 +292,7 @@ fn files(room: &mut Room) {
             "3",
         )
         .does(|file: String, call: Call| {
-            let path = call.readable(&file)?;
+            let path = call.existing(&file)?;
             Ok::<_, Fault>(Table::read(&path)?)
         });
 }
