@@ -190,9 +190,10 @@ fn place(settled: &Settled, width: f64, left: f64, over: f64) -> Result<Layout, 
     })
 }
 
-/// Least height of the plot for its key: a longer column reaches down beside the label of x.
+/// Least height of the plot for its key: a longer column reaches down beside the numbers
+/// and the label of x.
 pub(crate) fn least_height(settled: &Settled) -> f64 {
-    settled.key.least_height() - 0.5 * LABEL_LINE
+    settled.key.least_height() - NUMBER_LINE - LABEL_LINE
 }
 
 /// Width and height of the plot where `room` is left between its margins.
