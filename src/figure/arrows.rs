@@ -2,8 +2,9 @@
 
 use super::axis::Plot;
 use super::colour::{INK, PAPER};
+use super::curve::within;
 use super::error::FigureError;
-use super::scene::{Path, Point, Scene, Stroke};
+use super::scene::{Path, Point, Rect, Scene, Stroke};
 use super::ticks::{decimal, step_near};
 use crate::field::{Status, VectorField};
 
@@ -43,6 +44,8 @@ pub(crate) struct Fitted {
 }
 
 const SPACING_MM: f64 = 3.4;
+/// Gap between an arrow and a mark or label it keeps off.
+const CLEARANCE: f64 = 0.3;
 
 impl Arrows {
     pub fn new(field: &VectorField, options: &ArrowOptions) -> Result<Self, FigureError> {
@@ -123,7 +126,10 @@ impl Fitted {
     }
 
     /// Draws the vectors: measured ones solid, replaced ones hollow.
-    pub fn draw(&self, scene: &mut Scene, field: &VectorField, plot: &Plot) {
+    ///
+    /// An arrow whose tip would lie beyond the frame, or that would cross one of the boxes to be
+    /// kept `clear`, is left out; tails end at the frame.
+    pub fn draw(&self, scene: &mut Scene, field: &VectorField, plot: &Plot, clear: &[Rect]) {
         let (mut measured, mut replaced) = (Path::new(), Path::new());
         let start = |n: usize| n.saturating_sub(1) % self.every / 2;
         for j in (start(field.grid.ny)..field.grid.ny).step_by(self.every) {
@@ -136,13 +142,29 @@ impl Fitted {
                 let (x, y) = (field.grid.x(i), field.grid.y(j));
                 if let Some(at) = plot.at(x, y).filter(|p| plot.rect.grown(0.01).holds(*p)) {
                     let k = self.mm_per_speed;
-                    add_arrow(path, at, [k * field.u[(j, i)], -k * field.v[(j, i)]]);
+                    let vector = [k * field.u[(j, i)], -k * field.v[(j, i)]];
+                    if fits(at, vector, plot, clear) {
+                        add_arrow(path, at, vector);
+                    }
                 }
             }
         }
-        draw_measured(scene, measured);
-        draw_replaced(scene, replaced);
+        scene.clipped(plot.rect, |scene| {
+            draw_measured(scene, measured);
+            draw_replaced(scene, replaced);
+        });
     }
+}
+
+/// True where the arrow ends inside the frame and crosses none of the boxes.
+fn fits(at: Point, vector: Point, plot: &Plot, clear: &[Rect]) -> bool {
+    let end = |half: f64| [at[0] + half * vector[0], at[1] + half * vector[1]];
+    let (tail, tip) = (end(-0.5), end(0.5));
+    // Nodes on the frame itself keep their dots.
+    plot.rect.grown(0.01).holds(tip)
+        && clear
+            .iter()
+            .all(|rect| within(&[tail, tip], rect.grown(CLEARANCE)).is_empty())
 }
 
 pub(crate) fn draw_measured(scene: &mut Scene, path: Path) {

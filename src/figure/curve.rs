@@ -5,6 +5,7 @@ use super::colour::{CURVES, Colour, PAPER};
 use super::error::FigureError;
 use super::placement::Placement;
 use super::scene::{Path, Point, Rect, Scene, Stroke};
+use super::ticks::{decimal, step_near};
 use crate::field::Trace;
 use crate::quantity::Unit;
 
@@ -189,7 +190,7 @@ impl From<&Trace> for Curve {
 /// curve keeps its slopes and does not dash what nobody sees.
 ///
 /// Each piece is cut by the method of Liang & Barsky 1984 (from memory).
-fn within(points: &[Point], rect: Rect) -> Path {
+pub(crate) fn within(points: &[Point], rect: Rect) -> Path {
     let mut path = Path::new();
     let mut pen: Option<Point> = None;
     for pair in points.windows(2) {
@@ -315,36 +316,28 @@ pub struct Bars {
 
 impl Bars {
     /// How many of the finite `values` fall into each of `count` equal intervals over their
-    /// range; by default as many intervals as the Freedman-Diaconis rule says, 5 to 60.
+    /// range; by default into intervals between round numbers (multiples of 1, 2 or 5 times a
+    /// power of ten) about as wide as the Freedman-Diaconis rule says, near 5 to 60 of them.
+    /// A value on an edge counts above it.
     ///
     /// Freedman & Diaconis 1981 (from memory): width 2 IQR n^(-1/3).
     pub fn histogram(values: &[f64], name: &str, unit: Unit, count: Option<usize>) -> Self {
         let mut sorted: Vec<f64> = values.iter().copied().filter(|v| v.is_finite()).collect();
         sorted.sort_by(f64::total_cmp);
-        let n = sorted.len();
-        let span = Span::of(sorted.iter().copied()).opened();
-        let quarter = |q: usize| sorted.get(n * q / 4).copied().unwrap_or(0.0);
-        let width = 2.0 * (quarter(3) - quarter(1)) / (n as f64).cbrt();
-        let wanted = (span.width() / width).ceil();
-        let count = count.unwrap_or(if wanted.is_finite() {
-            wanted.clamp(5.0, 60.0) as usize
-        } else {
-            5
-        });
-        let count = count.max(1);
-        let mut heights = vec![0.0; if n == 0 { 0 } else { count }];
+        let edges = match count {
+            _ if sorted.is_empty() => Vec::new(),
+            Some(count) => equal_edges(&sorted, count.max(1)),
+            None => round_edges(&sorted),
+        };
+        let mut heights = vec![0.0; edges.len().saturating_sub(1)];
+        let last = heights.len().saturating_sub(1);
         for v in &sorted {
-            let k = ((v - span.lo) / span.width() * count as f64) as usize;
-            heights[k.min(count - 1)] += 1.0;
+            let k = edges.partition_point(|edge| edge <= v).saturating_sub(1);
+            heights[k.min(last)] += 1.0;
         }
-        let edge = |k: usize| span.lo + span.width() * k as f64 / count as f64;
         Self {
             name: "count".to_owned(),
-            edges: if n == 0 {
-                Vec::new()
-            } else {
-                (0..=count).map(edge).collect()
-            },
+            edges,
             heights,
             x_name: name.to_owned(),
             x_unit: unit,
@@ -392,4 +385,39 @@ impl Bars {
         }
         scene.fill(path, colour.faded(BAR_OPACITY));
     }
+}
+
+fn equal_edges(sorted: &[f64], count: usize) -> Vec<f64> {
+    let span = Span::of(sorted.iter().copied()).opened();
+    (0..=count)
+        .map(|k| span.lo + span.width() * k as f64 / count as f64)
+        .collect()
+}
+
+fn round_edges(sorted: &[f64]) -> Vec<f64> {
+    let n = sorted.len();
+    let span = Span::of(sorted.iter().copied()).opened();
+    let quarter = |q: usize| sorted.get(n * q / 4).copied().unwrap_or(0.0);
+    let width = 2.0 * (quarter(3) - quarter(1)) / (n as f64).cbrt();
+    let wanted = (span.width() / width).ceil();
+    let count = if wanted.is_finite() {
+        wanted.clamp(5.0, 60.0)
+    } else {
+        5.0
+    };
+    if !(1e-150..1e150).contains(&span.width()) {
+        // Beyond what an axis carries, which says so when it is drawn.
+        return equal_edges(sorted, count as usize);
+    }
+    let (mantissa, power) = step_near(span.width() / count);
+    let step = decimal(mantissa, power);
+    let at = |k: i64| decimal(k * mantissa, power);
+    let (mut first, mut last) = (
+        (span.lo / step).floor() as i64,
+        (span.hi / step).ceil() as i64,
+    );
+    // Division may land on the wrong side of an edge.
+    first -= i64::from(at(first) > span.lo);
+    last += i64::from(at(last) < span.hi);
+    (first..=last).map(at).collect()
 }

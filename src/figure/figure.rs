@@ -78,7 +78,8 @@ impl Figure {
     }
 
     /// Draws vectors as arrows, each with its middle at its node, and a reference arrow beside
-    /// the plot. Replaced vectors are hollow, masked ones are left out.
+    /// the plot. Replaced vectors are hollow, masked ones are left out, and so are those that
+    /// would point over the frame or cross the mark or label of an outline.
     pub fn arrows(self, field: impl Into<Arc<VectorField>>, options: ArrowOptions) -> Self {
         self.with(Layer::Arrows(field.into(), options))
     }
@@ -137,6 +138,9 @@ impl Figure {
     }
 
     /// Size on paper in mm. By default 120 mm wide and as high as the content asks.
+    ///
+    /// A map, having one scale along both axes, may need less than the height; the sheet then ends
+    /// below it.
     pub fn size_mm(mut self, width: f64, height: f64) -> Self {
         self.width_mm = Some(width);
         self.height_mm = Some(height);

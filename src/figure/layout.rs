@@ -25,7 +25,9 @@ pub(crate) const KEY_GAP: f64 = 4.0;
 pub(crate) const LONG: f64 = 0.8;
 pub(crate) const SHORT: f64 = 0.4;
 /// Least width and height of the plot.
-const LEAST_PLOT: f64 = 12.0;
+pub(crate) const LEAST_PLOT: f64 = 12.0;
+/// Room under the plot.
+pub(crate) const FOOT: f64 = NUMBER_LINE + LABEL_LINE + PAD;
 /// A map more slender than this is not drawn to one scale: it would be a thread.
 const MOST_SLENDER: f64 = 8.0;
 
@@ -154,13 +156,17 @@ fn place(settled: &Settled, width: f64, left: f64, over: f64) -> Result<Layout, 
         left,
         right,
         top: PAD + titles * TITLE_LINE + legend + LABEL_LINE,
-        bottom: NUMBER_LINE + LABEL_LINE + PAD,
+        bottom: FOOT,
     };
     let (w, h) = plot_size(settled, room, &margins)?;
     let upright = margins.top + margins.bottom;
-    // A column longer than the plot reaches down beside the label of x.
-    let column = settled.key.least_height() - 0.5 * LABEL_LINE;
-    let height = settled.figure.height_mm.unwrap_or(upright + h.max(column));
+    let natural = upright + h.max(least_height(settled));
+    let height = match settled.figure.height_mm {
+        // One scale along both axes may leave a map lower than asked: no blank strip below it.
+        Some(height) if settled.is_map => height.min(natural),
+        Some(height) => height,
+        None => natural,
+    };
     let rect = Rect {
         x: left + 0.5 * (room - w),
         y: margins.top,
@@ -184,6 +190,12 @@ fn place(settled: &Settled, width: f64, left: f64, over: f64) -> Result<Layout, 
     })
 }
 
+/// Least height of the plot for its key: a longer column reaches down beside the numbers
+/// and the label of x.
+pub(crate) fn least_height(settled: &Settled) -> f64 {
+    settled.key.least_height() - NUMBER_LINE - LABEL_LINE
+}
+
 /// Width and height of the plot where `room` is left between its margins.
 fn plot_size(settled: &Settled, room: f64, margins: &Margins) -> Result<(f64, f64), FigureError> {
     let ratio = (settled.y.hi - settled.y.lo) / (settled.x.hi - settled.x.lo);
@@ -205,9 +217,9 @@ fn plot_size(settled: &Settled, room: f64, margins: &Margins) -> Result<(f64, f6
             )
         }
     };
-    let column = settled.key.least_height() - 0.5 * LABEL_LINE;
-    let crowded = settled.figure.height_mm.is_some() && high < column;
-    if room < LEAST_PLOT || high < LEAST_PLOT || crowded {
+    let column = least_height(settled);
+    let crowded = settled.figure.height_mm.is_some() && high < column - 1e-6;
+    if room < LEAST_PLOT || high < LEAST_PLOT - 1e-6 || crowded {
         return Err(FigureError::Size(format!(
             "{:.0} x {:.0} mm leaves no room for the plot; give at least {:.0} x {:.0} mm",
             room + margins.left + margins.right,

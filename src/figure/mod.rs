@@ -20,6 +20,7 @@ mod error;
 mod figure;
 mod font;
 mod key;
+mod labels;
 mod layer;
 mod layout;
 mod outlines;

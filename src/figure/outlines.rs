@@ -4,6 +4,7 @@ use std::f64::consts::{FRAC_PI_2, PI};
 
 use super::axis::Plot;
 use super::colour::{INK, PAPER};
+use super::labels::{self, Traced};
 use super::placement::{Placement, base_line, text_box};
 use super::scene::{Path, Point, Rect, Scene, Stroke, Style};
 use crate::quantity::Unit;
@@ -37,45 +38,100 @@ pub(crate) const DOUBT: [f64; 2] = [1.5, 1.0];
 const LABEL_MM: f64 = 2.7;
 const MARK_MM: f64 = 1.25;
 
-pub(crate) fn draw(scene: &mut Scene, set: &OutlineSet, plot: &Plot) {
+/// Outlines with the places of their marks and labels settled.
+pub(crate) struct Placed<'a> {
+    lines: Vec<(Path, bool)>,
+    marks: Vec<Mark<'a>>,
+}
+
+struct Mark<'a> {
+    outline: &'a Outline,
+    centre: Point,
+    /// The box of the label.
+    label: Rect,
+}
+
+pub(crate) fn place<'a>(set: &'a OutlineSet, plot: &Plot) -> Placed<'a> {
     let mut placement = Placement::new(plot.rect.grown(-0.6));
-    let visible = |o: &&Outline| plot.x.holds(o.centre[0]) && plot.y.holds(o.centre[1]);
-    scene.clipped(plot.rect, |scene| {
-        for outline in &set.list {
-            let points: Vec<Point> = outline
-                .polygon
-                .iter()
-                .filter_map(|p| plot.at(p[0], p[1]))
-                .collect();
-            placement.take_line(&points);
-            draw_line(scene, Path::polyline(points, true), outline.flagged);
-        }
-        for outline in set.list.iter().filter(visible) {
-            if let Some(centre) = plot.at(outline.centre[0], outline.centre[1]) {
-                draw_mark(scene, centre, outline.clockwise);
-                placement.take(
-                    Rect {
-                        x: centre[0],
-                        y: centre[1],
-                        w: 0.0,
-                        h: 0.0,
-                    }
-                    .grown(MARK_MM),
-                );
+    let (mut lines, mut owners, mut traced) = (Vec::new(), Vec::new(), Vec::new());
+    for outline in &set.list {
+        let corners = outline.polygon.iter();
+        let line: Vec<Point> = corners.filter_map(|p| plot.at(p[0], p[1])).collect();
+        placement.take_line(&line);
+        lines.push((Path::polyline(line.clone(), true), outline.flagged));
+        let [x, y] = outline.centre;
+        if let Some(centre) = plot.at(x, y) {
+            if plot.x.holds(x) && plot.y.holds(y) {
+                placement.take(mark_box(centre));
             }
+            owners.push(outline);
+            traced.push(Traced { centre, line });
         }
-    });
-    for outline in set.list.iter().filter(visible) {
-        if let Some(centre) = plot.at(outline.centre[0], outline.centre[1]) {
-            draw_label(scene, &mut placement, centre, &outline.label);
+    }
+    let mut marks = Vec::new();
+    for (own, outline) in owners.into_iter().enumerate() {
+        if plot.x.holds(outline.centre[0]) && plot.y.holds(outline.centre[1]) {
+            let size = text_box(&outline.label, &label_style());
+            marks.push(Mark {
+                outline,
+                centre: traced[own].centre,
+                label: labels::choose(&mut placement, &traced, own, size, MARK_MM + 0.25),
+            });
+        }
+    }
+    Placed { lines, marks }
+}
+
+impl Placed<'_> {
+    /// The boxes of marks and labels, which arrows keep off.
+    pub fn boxes(&self) -> impl Iterator<Item = Rect> + '_ {
+        self.marks.iter().flat_map(|mark| {
+            let label = (!mark.outline.label.is_empty()).then_some(mark.label);
+            std::iter::once(mark_box(mark.centre)).chain(label)
+        })
+    }
+
+    pub fn draw(&self, scene: &mut Scene, plot: &Plot) {
+        scene.clipped(plot.rect, |scene| {
+            for (line, flagged) in &self.lines {
+                draw_line(scene, line.clone(), *flagged);
+            }
+            for mark in &self.marks {
+                draw_mark(scene, mark.centre, mark.outline.clockwise);
+            }
+        });
+        for mark in &self.marks {
+            scene.text(base_line(&mark.label), &mark.outline.label, label_style());
         }
     }
 }
 
+fn label_style() -> Style {
+    Style::plain(LABEL_MM).medium().haloed()
+}
+
+fn mark_box(centre: Point) -> Rect {
+    let [x, y] = centre;
+    Rect {
+        x,
+        y,
+        w: 0.0,
+        h: 0.0,
+    }
+    .grown(MARK_MM)
+}
+
 pub(crate) fn draw_line(scene: &mut Scene, path: Path, doubtful: bool) {
-    scene.stroke(path.clone(), Stroke::new(PAPER.faded(210), 0.95).rounded());
+    let halo = Stroke::new(PAPER.faded(210), 0.95);
     let line = Stroke::new(INK, 0.4);
-    scene.stroke(path, if doubtful { line.dashed(&DOUBT) } else { line });
+    // Round ends would close the gaps of a dashed halo to a ring of its own.
+    let (halo, line) = if doubtful {
+        (halo.dashed(&DOUBT), line.dashed(&DOUBT))
+    } else {
+        (halo.rounded(), line)
+    };
+    scene.stroke(path.clone(), halo);
+    scene.stroke(path, line);
 }
 
 /// A dot with a three-quarter arc about it, its arrow head turning the eddy's way.
@@ -105,31 +161,4 @@ fn draw_mark(scene: &mut Scene, centre: Point, clockwise: bool) {
     scene.stroke(solid.clone(), Stroke::new(halo, 0.55).rounded());
     scene.stroke(arc, Stroke::new(INK, 0.28));
     scene.fill(solid, INK);
-}
-
-fn draw_label(scene: &mut Scene, placement: &mut Placement, centre: Point, label: &str) {
-    let style = Style::plain(LABEL_MM).medium().haloed();
-    let size = text_box(label, &style);
-    let candidates = [1.0, 1.8, 2.8].into_iter().flat_map(|far| {
-        [
-            (1.0, -1.0),
-            (-1.0, -1.0),
-            (1.0, 1.0),
-            (-1.0, 1.0),
-            (0.0, -1.2),
-            (0.0, 1.2),
-        ]
-        .into_iter()
-        .map(move |(sx, sy)| {
-            let reach = far * (MARK_MM + 0.25);
-            Rect {
-                x: centre[0] + sx * (reach + 0.5 * size.w) - 0.5 * size.w,
-                y: centre[1] + sy * (reach + 0.3 * size.h) - 0.5 * size.h,
-                ..size
-            }
-        })
-    });
-    if let Some(rect) = placement.choose(candidates) {
-        scene.text(base_line(&rect), label, style);
-    }
 }

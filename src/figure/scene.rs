@@ -165,6 +165,10 @@ impl Rect {
         self.y + self.h
     }
 
+    pub fn middle(&self) -> Point {
+        [self.x + 0.5 * self.w, self.y + 0.5 * self.h]
+    }
+
     pub fn holds(&self, p: Point) -> bool {
         p[0] >= self.x && p[0] <= self.right() && p[1] >= self.y && p[1] <= self.bottom()
     }

@@ -68,8 +68,12 @@ pub(crate) fn settle(figure: &Figure) -> Result<Settled<'_>, FigureError> {
     }
     let is_map = layers.iter().any(Layer::is_map);
     let room = if is_map { 0.0 } else { 0.06 };
-    let lines_only = !layers.iter().any(|l| matches!(l, Layer::Points(_)));
-    let side_room = if is_map || lines_only { 0.0 } else { 0.03 };
+    let ends_free = |l: &Layer| matches!(l, Layer::Line(_) | Layer::Points(_));
+    let side_room = if !is_map && layers.iter().any(ends_free) {
+        0.03
+    } else {
+        0.0
+    };
     let on_floor = layers.iter().any(|l| matches!(l, Layer::Bars(_))) && y.lo == 0.0;
     let x = Axis::new("x", x, figure.x_range, log.0, side_room)?;
     let mut y = Axis::new("y", y, figure.y_range, log.1, room)?;

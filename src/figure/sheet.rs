@@ -9,10 +9,10 @@ use super::font::CAPITAL;
 use super::key::with_unit;
 use super::layer::Layer;
 use super::layout::{
-    KEY_GAP, LABEL_LINE, LABEL_MM, LONG, Layout, NUMBER_LINE, NUMBER_MM, SHORT, draw_title,
-    lay_out, title_lines, widest,
+    KEY_GAP, LABEL_LINE, LABEL_MM, LEAST_PLOT, LONG, Layout, NUMBER_LINE, NUMBER_MM, SHORT,
+    draw_title, lay_out, least_height, title_lines, widest,
 };
-use super::outlines;
+use super::outlines::{self, Placed};
 use super::placement::{Placement, base_line, text_box};
 use super::scene::{Anchor, Item, Path, Rect, Scene, Stroke, Style};
 use super::settle::{Settled, settle};
@@ -23,6 +23,27 @@ pub(crate) fn scene(figure: &Figure, dots_per_mm: f64) -> Result<Scene, FigureEr
     let settled = settle(figure)?;
     let layout = lay_out(&settled)?;
     Ok(settled.draw(&layout, dots_per_mm))
+}
+
+/// How the plot of a single figure stands on its sheet.
+pub(crate) struct Stand {
+    /// Upper edge of the plot, and the plot's height.
+    pub top: f64,
+    pub height: f64,
+    pub is_map: bool,
+    /// Least height it can be drawn with, its key beside it.
+    pub least: f64,
+}
+
+pub(crate) fn stand(figure: &Figure) -> Result<Stand, FigureError> {
+    let settled = settle(figure)?;
+    let rect = lay_out(&settled)?.plot.rect;
+    Ok(Stand {
+        top: rect.y,
+        height: rect.h,
+        is_map: settled.is_map,
+        least: least_height(&settled).max(LEAST_PLOT),
+    })
 }
 
 impl Settled<'_> {
@@ -43,10 +64,24 @@ impl Settled<'_> {
     }
 
     fn draw_layers(&self, scene: &mut Scene, plot: &Plot, dots_per_mm: f64) -> Option<Fitted> {
+        let outlines: Vec<Option<Placed>> = self
+            .figure
+            .layers
+            .iter()
+            .map(|layer| match layer {
+                Layer::Outlines(set) => Some(outlines::place(set, plot)),
+                _ => None,
+            })
+            .collect();
+        let clear: Vec<Rect> = outlines.iter().flatten().flat_map(Placed::boxes).collect();
         let mut fitted = None;
         let mut index = 0;
         let parts = self.shadings.iter().zip(&self.arrows);
-        for (layer, (shading, arrows)) in self.figure.layers.iter().zip(parts) {
+        let layers = self.figure.layers.iter().zip(&outlines);
+        for ((layer, outlines), (shading, arrows)) in layers.zip(parts) {
+            if let Some(placed) = outlines {
+                placed.draw(scene, plot);
+            }
             let number = index;
             index += usize::from(layer.legend().is_some());
             match (layer, shading, arrows) {
@@ -57,10 +92,9 @@ impl Settled<'_> {
                 }
                 (Layer::Arrows(field, _), _, Some(arrows)) => {
                     let fit = arrows.fit(field, plot);
-                    fit.draw(scene, field, plot);
+                    fit.draw(scene, field, plot, &clear);
                     fitted = Some(fit);
                 }
-                (Layer::Outlines(set), ..) => outlines::draw(scene, set, plot),
                 (Layer::Line(c), ..) => {
                     scene.clipped(plot.rect, |s| c.draw_line(s, plot, number));
                 }

@@ -136,7 +136,8 @@ fn the_same_figure_gives_the_same_bytes_and_a_changed_copy_leaves_it_alone() {
 
 #[test]
 fn a_png_has_the_size_on_paper_at_the_dots_asked_for() {
-    let figure = map().size_mm(101.6, 101.6);
+    let curve = Curve::new("f", vec![0.0, 1.0], vec![1.0, 2.0]);
+    let figure = Figure::new().line(curve).size_mm(101.6, 101.6);
     let bytes = figure.png(100.0).unwrap();
     // Read by the general-purpose `image` crate: 101.6 mm are 4 inches.
     let image = image::load_from_memory(&bytes).unwrap().to_rgb8();
@@ -150,6 +151,14 @@ fn a_png_has_the_size_on_paper_at_the_dots_asked_for() {
             .to_string()
             .contains("20 to 2400")
     );
+}
+
+#[test]
+fn a_map_given_more_height_than_its_scale_allows_leaves_no_blank_below() {
+    let natural = map().width_mm(90.0).scene(4.0).unwrap();
+    let given = map().size_mm(90.0, 140.0).scene(4.0).unwrap();
+    assert_eq!(given.width, 90.0);
+    assert!((given.height - natural.height).abs() < 0.01);
 }
 
 fn svg_size(figure: &Figure) -> String {
@@ -466,6 +475,158 @@ fn the_extension_decides_the_format_and_an_unknown_one_writes_nothing() {
     assert!(error.contains("empty") && !path("b.svg").exists());
 }
 
+/// The least x or y and the greatest among the points of a path.
+fn extent(path: &scene::Path, axis: usize) -> (f64, f64) {
+    let mut all = (f64::INFINITY, f64::NEG_INFINITY);
+    for step in &path.steps {
+        if let scene::Step::Move(p) | scene::Step::Line(p) = step {
+            all = (all.0.min(p[axis]), all.1.max(p[axis]));
+        }
+    }
+    all
+}
+
+#[test]
+fn arrows_point_inside_the_frame_and_keep_off_marks_and_labels() {
+    let mm = grid(20, 18, Unit::MM);
+    let even = |u: f64, v: f64| {
+        let fill = |w| Array2::from_elem((18, 20), w);
+        VectorField::new(mm, Unit::S, fill(u), fill(v), "even")
+    };
+    let plot = axis::Plot {
+        rect: scene::Rect {
+            x: 10.0,
+            y: 10.0,
+            w: 50.0,
+            h: 45.0,
+        },
+        x: axis::Axis::new(
+            "x",
+            axis::Span {
+                lo: 12.0,
+                hi: 172.0,
+            },
+            None,
+            false,
+            0.0,
+        )
+        .unwrap(),
+        y: axis::Axis::new(
+            "y",
+            axis::Span {
+                lo: 12.0,
+                hi: 156.0,
+            },
+            None,
+            false,
+            0.0,
+        )
+        .unwrap(),
+    };
+    let set = OutlineSet {
+        length: Unit::MM,
+        list: vec![ring(false, true)],
+    };
+    let boxes: Vec<scene::Rect> = outlines::place(&set, &plot).boxes().collect();
+    assert_eq!(boxes.len(), 2, "a mark and a label");
+    for (u, v) in [(3.0, 0.0), (-3.0, 0.0), (0.0, 3.0), (2.0, -2.0)] {
+        let field = even(u, v);
+        let fit = arrows::Arrows::new(&field, &ArrowOptions::default())
+            .unwrap()
+            .fit(&field, &plot);
+        let tips = |clear: &[scene::Rect]| -> Vec<scene::Point> {
+            let mut sheet = scene::Scene::new(70.0, 70.0);
+            fit.draw(&mut sheet, &field, &plot, clear);
+            let [scene::Item::Clip { rect, items }] = &sheet.items[..] else {
+                panic!("cut off at the frame");
+            };
+            assert_eq!(*rect, plot.rect);
+            let Some(scene::Item::Shape { path, .. }) = items.last() else {
+                panic!("arrows");
+            };
+            // An arrow is a polygon of seven corners and its closing; the fourth is the tip.
+            let tips = path.steps.chunks(8).map(|arrow| match arrow[3] {
+                scene::Step::Line(p) => p,
+                _ => panic!("a corner"),
+            });
+            tips.collect()
+        };
+        let (all, kept) = (tips(&[]), tips(&boxes));
+        assert!(kept.len() < all.len() && kept.len() > all.len() / 2);
+        assert!(all.iter().all(|p| plot.rect.grown(0.02).holds(*p)));
+        let covered = |p: &scene::Point| boxes.iter().any(|b| b.holds(*p));
+        assert!(!kept.iter().any(covered));
+    }
+}
+
+#[test]
+fn an_outline_in_doubt_has_no_unbroken_rim() {
+    let mut sheet = scene::Scene::new(50.0, 50.0);
+    outlines::draw_line(
+        &mut sheet,
+        scene::Path::segment([0.0, 0.0], [9.0, 0.0]),
+        true,
+    );
+    assert_eq!(sheet.items.len(), 2);
+    for item in &sheet.items {
+        let scene::Item::Shape { stroke, .. } = item else {
+            panic!("a line");
+        };
+        let stroke = stroke.as_ref().unwrap();
+        assert!(!stroke.dash.is_empty() && !stroke.round);
+    }
+}
+
+#[test]
+fn a_curve_ends_short_of_the_frame() {
+    let curve = Curve::new("f", vec![0.0, 1.0, 2.0], vec![1.0, 2.0, 1.5]);
+    let sheet = Figure::new().line(curve).scene(4.0).unwrap();
+    let (rect, items) = sheet
+        .items
+        .iter()
+        .find_map(|item| match item {
+            scene::Item::Clip { rect, items } => Some((rect, items)),
+            _ => None,
+        })
+        .unwrap();
+    let Some(scene::Item::Shape { path, .. }) = items.first() else {
+        panic!("a line");
+    };
+    let (left, right) = extent(path, 0);
+    assert!(left > rect.x + 1.0 && right < rect.right() - 1.0);
+}
+
+#[test]
+fn plots_in_one_row_stand_level_and_are_equally_high() {
+    let line = |name: &str| Figure::new().line(Curve::new(name, vec![0.0, 1.0], vec![1.0, 2.0]));
+    let shaded = Figure::new().shade(
+        vorticity(grid(20, 18, Unit::MM), waves),
+        ShadeOptions::default(),
+    );
+    let row = vec![
+        map(),
+        shaded,
+        line("second").title("Over it"),
+        line("third"),
+    ];
+    let sheet = Figure::panels(row, 4).width_mm(480.0).scene(4.0).unwrap();
+    // Shading fills the plot of a map; lines are cut off at the plot.
+    let plots: Vec<scene::Rect> = sheet
+        .items
+        .iter()
+        .filter_map(|item| match item {
+            scene::Item::Dots { rect, .. } | scene::Item::Clip { rect, .. } => Some(*rect),
+            _ => None,
+        })
+        .filter(|rect| rect.h > 10.0)
+        .collect();
+    assert!(plots.len() >= 4);
+    for plot in &plots {
+        assert!((plot.y - plots[0].y).abs() < 0.01, "{plots:?}");
+        assert!((plot.h - plots[0].h).abs() < 0.01, "{plots:?}");
+    }
+}
+
 #[test]
 fn panels_share_one_sheet() {
     let line = Figure::new().line(Curve::new("f", vec![0.0, 1.0], vec![1.0, 2.0]));
@@ -484,6 +645,12 @@ fn a_histogram_counts_every_finite_value_once() {
     let bars = Bars::histogram(&values, "error", Unit::PX, None);
     assert_eq!(bars.heights.iter().sum::<f64>(), 1000.0);
     assert_eq!(bars.edges.len(), bars.heights.len() + 1);
+    // Ten values between 0.13 and 0.83: five intervals would be 0.14 wide; 0.1 is the round
+    // number nearest by ratio, and a value on an edge counts above it.
+    let few = [0.13, 0.2, 0.25, 0.31, 0.33, 0.4, 0.47, 0.52, 0.7, 0.83];
+    let bars = Bars::histogram(&few, "error", Unit::PX, None);
+    assert_eq!(bars.edges, [0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9]);
+    assert_eq!(bars.heights, [1.0, 2.0, 2.0, 2.0, 1.0, 0.0, 1.0, 1.0]);
     let bars = Bars::histogram(
         &[1.0, 1.0, f64::NAN, f64::INFINITY],
         "error",
