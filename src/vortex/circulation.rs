@@ -60,7 +60,9 @@ impl CirculationCurve {
         };
         for k in 1..=(REACH * radius / step) as usize {
             let r = k as f64 * step;
-            let points = (8.0 * r / cell).clamp(48.0, 180.0) as usize;
+            // Rounded: r is a simple multiple of the cell, and cutting off would let the last bit
+            // of the unit decide.
+            let points = (8.0 * r / cell).clamp(48.0, 180.0).round() as usize;
             let Some(circulation) = round(field, peak, r, points) else {
                 break;
             };

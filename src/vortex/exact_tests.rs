@@ -347,6 +347,45 @@ fn pair(cos: f64, sin: f64, shift: (f64, f64), drift: (f64, f64)) -> Flow {
     ])
 }
 
+/// Holds the eddies of a pair against those of the same pair in other units.
+fn scaled_by(length: f64, strength: f64) -> Result<(), TestCaseError> {
+    let grid = square_grid(61, 2.0);
+    let plain = field(grid, &pair(1.0, 0.0, (0.0, 0.0), (0.3, 0.1)));
+    let scaled = VectorField::new(
+        Grid {
+            dx: 2.0 * length,
+            dy: 2.0 * length,
+            length: Unit::MM,
+            ..grid
+        },
+        Unit::S,
+        &plain.u * strength,
+        &plain.v * strength,
+        "scaled",
+    );
+    let (a, b) = (eddies(&plain), eddies(&scaled));
+    prop_assert_eq!(a.list.len(), b.list.len());
+    let rate = strength / length;
+    let factors = [rate, strength * length, length, length, strength * length];
+    for (a, b) in numbers(&a).iter().zip(numbers(&b)) {
+        for ((a, b), factor) in a.iter().zip(b).zip(factors) {
+            prop_assert!(
+                (a * factor - b).abs() <= 1e-6 * b.abs(),
+                "{a} x {factor}, {b}"
+            );
+        }
+    }
+    prop_assert_eq!(b.list[0].circulation.unit().header(), "mm2_per_s");
+    Ok(())
+}
+
+/// Found once: circles of a whole number of points, cut off instead of rounded, lost one to the
+/// last bit of the unit.
+#[test]
+fn sizes_scale_where_rounding_once_lost_a_point_of_a_circle() {
+    scaled_by(9.701_476_324_372_113, 0.001).unwrap();
+}
+
 proptest! {
     #![proptest_config(ProptestConfig::with_cases(24))]
     #[test]
@@ -375,25 +414,7 @@ proptest! {
         length in 0.01..100.0f64,
         strength in 1e-3..1e3f64,
     ) {
-        let grid = square_grid(61, 2.0);
-        let plain = field(grid, &pair(1.0, 0.0, (0.0, 0.0), (0.3, 0.1)));
-        let scaled = VectorField::new(
-            Grid { dx: 2.0 * length, dy: 2.0 * length, length: Unit::MM, ..grid },
-            Unit::S,
-            &plain.u * strength,
-            &plain.v * strength,
-            "scaled",
-        );
-        let (a, b) = (eddies(&plain), eddies(&scaled));
-        prop_assert_eq!(a.list.len(), b.list.len());
-        let rate = strength / length;
-        let factors = [rate, strength * length, length, length, strength * length];
-        for (a, b) in numbers(&a).iter().zip(numbers(&b)) {
-            for ((a, b), factor) in a.iter().zip(b).zip(factors) {
-                prop_assert!((a * factor - b).abs() <= 1e-6 * b.abs(), "{a} x {factor}, {b}");
-            }
-        }
-        prop_assert_eq!(b.list[0].circulation.unit().header(), "mm2_per_s");
+        scaled_by(length, strength)?;
     }
 
     #[test]

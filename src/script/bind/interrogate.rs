@@ -146,7 +146,7 @@ pub(super) fn records(room: &mut Room) {
         .does(
             |recording: &Recording, plan: Option<Arc<Plan>>, folder: Option<String>, call: Call| {
                 let all = series(recording, &*given(plan)?, folder, &call)?;
-                if all.len() > 0 {
+                if !all.is_empty() {
                     // One pair says whether the order and the windows are right.
                     let files = recording.files().iter().map(|f| f.to_string_lossy());
                     let name = files.collect::<Vec<_>>().join(" ");
