@@ -40,6 +40,12 @@ const TABLES: [(&str, &str); 8] = [
 
 const OPTIONS: &[Case] = &[
     (
+        "uniform(#{ u_px_per_frame: 1, v_px_per_frame: 0 }).field(#{ nx: 9, ny: 9, spacing_px: 1 }).u.along([0, 0], [8, 8], #{ points: 1000000000000 });",
+        &[],
+        1,
+        "a line takes 2 to 1000000 points, not 1000000000000",
+    ),
+    (
         "plan(#{ overlp: 0.5 });",
         &[],
         1,

@@ -385,3 +385,32 @@ fn errors_of_neighbours_go_together_as_the_field_says() {
         );
     }
 }
+
+#[test]
+fn windows_behind_a_mask_are_masked_and_those_over_the_edge_are_outside() {
+    let flow = Flow::from(Uniform { u: 0.4, v: -0.2 });
+    let (first, second) = particle_images(&flow, &images()).unwrap();
+    // The left 100 columns are hidden, so that windows deep inside have nothing left.
+    let mask = ndarray::Array2::from_shape_fn((SIDE, SIDE), |(_, column)| column < 100);
+    let plan = Plan::new(&PlanOptions::default()).unwrap();
+    let field = kolk::interrogate::interrogate_images(
+        &first.pixels,
+        &second.pixels,
+        Some(&mask),
+        &plan,
+        &Scale::default(),
+        "masked",
+        &Task::quiet(),
+    )
+    .unwrap();
+    for ((j, i), status) in field.status.indexed_iter() {
+        let x = field.grid.x(i);
+        if x < 95.0 {
+            assert_eq!(*status, Status::Masked, "{x}");
+            assert!(field.u[(j, i)].is_nan());
+        } else if x > 105.0 {
+            assert_eq!(*status, Status::Measured, "{x}");
+            assert!((field.u[(j, i)] - 0.4).abs() < 0.05);
+        }
+    }
+}

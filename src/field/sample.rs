@@ -175,6 +175,9 @@ fn place(grid: &Grid, x: f64, y: f64) -> Result<Place, FieldError> {
     })
 }
 
+/// Points a line can have: more than any figure shows, few enough for any memory.
+const MOST_POINTS: usize = 1_000_000;
+
 /// `points` places evenly from `from` to `to`, both included.
 fn line(
     grid: &Grid,
@@ -182,9 +185,9 @@ fn line(
     to: (f64, f64),
     points: usize,
 ) -> Result<Vec<(f64, f64, Place)>, FieldError> {
-    if points < 2 {
+    if !(2..=MOST_POINTS).contains(&points) {
         return Err(FieldError::Option(format!(
-            "a line needs at least 2 points, not {points}"
+            "a line takes 2 to {MOST_POINTS} points, not {points}"
         )));
     }
     (0..points)
@@ -232,7 +235,7 @@ impl ScalarField {
     ///
     /// # Errors
     /// [`FieldError::Outside`] when the line leaves the grid, [`FieldError::Option`] for fewer
-    /// than two points.
+    /// than two points or more than a million.
     pub fn along(
         &self,
         from: (f64, f64),
@@ -264,7 +267,7 @@ impl VectorField {
     ///
     /// # Errors
     /// [`FieldError::Outside`] when the line leaves the grid, [`FieldError::Option`] for fewer
-    /// than two points.
+    /// than two points or more than a million.
     pub fn along(
         &self,
         from: (f64, f64),

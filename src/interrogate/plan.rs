@@ -49,7 +49,7 @@ pub struct PlanOptions {
     pub median_limit: f64,
     /// Displacement noise the median test tolerates, px: its small number in the denominator.
     pub median_floor_px: f64,
-    /// Share of a window that must be inside the image and outside masks, 0 to 1.
+    /// Share of a window that must be inside the image and outside masks, 0.1 to 1.
     pub least_lit: f64,
 }
 

@@ -2,7 +2,7 @@
 
 use std::sync::Arc;
 
-use ndarray::Array2;
+use ndarray::{Array2, s};
 
 use super::deform::Deformed;
 use super::layout::Layout;
@@ -146,7 +146,7 @@ pub fn interrogate_images(
         let reach = reach(layout.window, pass == 0);
         let is_last = pass + 1 == layouts.len();
         let findings = Pass::new(&images, layout, reach, is_last)?.run(task)?;
-        let judged = judge(&findings, layout, predictor.as_ref(), plan);
+        let judged = judge(&findings, layout, predictor.as_ref(), mask, plan);
         known = Some((judged.shifts.clone(), *layout));
         last = Some((judged, *layout, findings));
     }
@@ -209,6 +209,7 @@ fn judge(
     findings: &Array2<Finding>,
     layout: &Layout,
     predictor: Option<&Predictor>,
+    mask: Option<&Array2<bool>>,
     plan: &Plan,
 ) -> Judged {
     let options = plan.options();
@@ -249,12 +250,35 @@ fn judge(
         if good[at] {
             Status::Measured
         } else if !lit[at] {
-            Status::Outside
+            if behind_mask(layout, at, findings[at].lit, mask) {
+                Status::Masked
+            } else {
+                Status::Outside
+            }
         } else {
             Status::Replaced
         }
     });
     Judged { shifts, status }
+}
+
+/// True when a window of which the share `lit` is left lost more of it to the mask than to the
+/// edge of the image.
+fn behind_mask(
+    layout: &Layout,
+    (j, i): (usize, usize),
+    lit: f32,
+    mask: Option<&Array2<bool>>,
+) -> bool {
+    let Some(mask) = mask else { return false };
+    let (top, left) = layout.corner(j, i);
+    let (height, width) = (layout.window.height, layout.window.width);
+    let hidden = mask
+        .slice(s![top..top + height, left..left + width])
+        .iter()
+        .filter(|hidden| **hidden)
+        .count();
+    2.0 * hidden as f32 >= (1.0 - lit) * (width * height) as f32
 }
 
 /// Turns the last pass into a field with y up and the units of the calibration.

@@ -121,6 +121,9 @@ struct Seen {
     sense: Sense,
     peak: Peak,
     fraction: Fraction,
+    /// Diameter at 25 % of the peak, whatever fraction was asked for: as that of a Gaussian core,
+    /// whose radius at the fraction f goes as sqrt(ln(1/f)).
+    quarter_diameter: f64,
 }
 
 impl Seen {
@@ -138,9 +141,11 @@ impl Seen {
         };
         let peak = peak(rotation, &field.grid, &core.nodes)?;
         let fraction = fraction(field, rotation, peak, core.nodes.len(), options.fraction)?;
+        let to_quarter = (4f64.ln() / (1.0 / options.fraction).ln()).sqrt();
         Some(Seen {
             sense,
             peak,
+            quarter_diameter: fraction.diameter * to_quarter,
             fraction,
         })
     }
@@ -199,7 +204,7 @@ impl Seen {
     fn is_under_resolved(&self, field: &VectorField) -> bool {
         let spacing = field.grid.dx.max(field.grid.dy);
         let window = field.window.map_or(0.0, |(wide, high)| wide.max(high));
-        let diameter = self.fraction.diameter;
+        let diameter = self.quarter_diameter;
         diameter < LEAST_SPACINGS * spacing || diameter < LEAST_WINDOWS * window
     }
 }

@@ -286,7 +286,7 @@ fn sampling(room: &mut Room) {
         .input("from", "the field's length unit", "where the line starts")
         .input("to", "the field's length unit", "where it ends")
         .unit("that of the field")
-        .errors("the line leaves the field, or has fewer than two points")
+        .errors("the line leaves the field, or has fewer than two points or more than a million")
         .example(
             with_a_flow!("flow.speed().along([0, 40], [80, 40], #{ points: 41 })"),
             "trace of speed, 41 points over 80 px",
@@ -304,7 +304,7 @@ fn sampling(room: &mut Room) {
         .input("from", "the field's length unit", "where the line starts")
         .input("to", "the field's length unit", "where it ends")
         .unit("px/frame or mm/s")
-        .errors("the line leaves the field, or has fewer than two points")
+        .errors("the line leaves the field, or has fewer than two points or more than a million")
         .example(
             with_a_flow!("flow.along([0, 40], [80, 40])[1].name"),
             "\"v\"",

@@ -90,7 +90,7 @@ pub(super) fn records(room: &mut Room) {
 fn maps(room: &mut Room) {
     room.method::<Figure>("shade")
         .about("Shades a scalar field, with a colour bar; cells without a value are hatched.")
-        .words("colour map contour background heat")
+        .words("colour map contour background")
         .input("field", "any", "the field")
         .example(
             with_a_map!("figure().shade(flow.u, #{ scale: \"ebb_flood\" }).save(\"u.png\")"),
@@ -103,7 +103,7 @@ fn maps(room: &mut Room) {
         );
     room.method::<Figure>("arrows")
         .about("Draws vectors as arrows, with a reference arrow beside the plot; replaced vectors are hollow.")
-        .words("vectors quiver velocity")
+        .words("vectors velocity direction field")
         .input("field", "px/frame or mm/s", "the vector field")
         .example(with_a_map!("figure().arrows(flow, #{ every: 2 }).save(\"flow.svg\")"), "")
         .does(|figure: &Figure, field: Arc<VectorField>, options: Optional<ArrowOptions>| {
@@ -319,7 +319,7 @@ fn sheet(room: &mut Room) {
         .does(|figure: &Figure| figure.clone().log_y());
     room.function("panels")
         .about("Figures side by side on one sheet, read like lines of text.")
-        .words("subfigures grid beside columns several")
+        .words("grid side by side columns several")
         .input("figures", "", "the figures")
         .input("columns", "count", "how many stand side by side")
         .example(

@@ -196,7 +196,7 @@ fn element<T: Options + Element + 'static>(
     room.function(name)
         .about(about)
         .words(words)
-        .errors("a length is not above 0")
+        .errors("a number is not finite, or a length not above 0")
         .source(source)
         .example(example, "known flow of 1 element")
         .does(|options: Needed<T>| Flow::from(options.0));
