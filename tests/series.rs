@@ -133,14 +133,14 @@ fn a_field_read_back_is_the_one_that_was_interrogated_bit_for_bit() {
     }
 }
 
-/// Which frames a run wrote: a file that takes its name by renaming has a new number.
+/// Which frames a run wrote: a file that takes its name by renaming has a new number. The files
+/// are held open, so that the system cannot give a number out again while it is remembered.
 #[cfg(unix)]
-fn numbers(folder: &Path, pairs: usize) -> Vec<u64> {
+fn numbers(folder: &Path, pairs: usize) -> Vec<(u64, fs::File)> {
     use std::os::unix::fs::MetadataExt;
     let number = |k| {
-        fs::metadata(folder.join(format!("u/c.{k}.0.0")))
-            .unwrap()
-            .ino()
+        let file = fs::File::open(folder.join(format!("u/c.{k}.0.0"))).unwrap();
+        (file.metadata().unwrap().ino(), file)
     };
     (0..pairs).map(number).collect()
 }
@@ -150,9 +150,9 @@ fn numbers(folder: &Path, pairs: usize) -> Vec<u64> {
 fn only_what_changed_is_computed_again() {
     let folder = folder_of_frames(6, 64);
     let group = folder.path().join("s.zarr");
-    let changed = |before: &[u64]| -> Vec<usize> {
+    let changed = |before: &[(u64, fs::File)]| -> Vec<usize> {
         let after = numbers(&group, 6);
-        (0..6).filter(|&k| before[k] != after[k]).collect()
+        (0..6).filter(|&k| before[k].0 != after[k].0).collect()
     };
     run(&open(folder.path()), &plan(2.0), &group);
     let before = numbers(&group, 6);
