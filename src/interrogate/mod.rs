@@ -19,8 +19,8 @@ mod run;
 mod spline;
 mod statistics;
 mod taper;
-pub mod transform;
 mod validate;
 
+pub use kolk_correlate as transform;
 pub use plan::{Plan, PlanError, PlanOptions, WindowSize};
 pub use run::{ALGORITHM, InterrogateError, blank_field, interrogate, interrogate_images};

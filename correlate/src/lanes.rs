@@ -16,7 +16,7 @@ use super::butterfly::{Butterfly, Sample, product};
 pub const LANES: usize = 16;
 
 /// One real sample of every lane.
-pub(in crate::interrogate) type Lanes = [f32; LANES];
+pub type Lanes = [f32; LANES];
 
 /// One complex sample of every lane.
 #[derive(Clone, Copy, Debug)]

@@ -48,14 +48,14 @@ mod tests;
 mod windows;
 
 pub use direct::{centred, correlate_directly};
-pub use lanes::LANES;
-pub(super) use lanes::Lanes;
+pub use lanes::{LANES, Lanes};
+
 pub use moments::Moments;
 pub use peaks::{Peak, Peaks, Search};
 pub use planes::Planes;
-pub(super) use spectrum::lanes_at;
-pub(super) use windows::copy_weighted;
-pub use windows::{Layout, Polyphase, PolyphaseRow, WindowColumns, Windows, gather};
+pub use spectrum::lanes_at;
+
+pub use windows::{Layout, Polyphase, PolyphaseRow, WindowColumns, Windows, copy_weighted, gather};
 
 use axis::{Axis, along};
 use lanes::Phasor;
@@ -112,7 +112,7 @@ impl Correlator {
     /// [`TransformError::Length`] for a side below 2 or with another prime factor.
     ///
     /// ```
-    /// use kolk::interrogate::transform::Correlator;
+    /// use kolk_correlate::Correlator;
     /// assert!(Correlator::new(32, 48).is_ok());
     /// assert!(Correlator::new(32, 34).is_err());
     /// ```

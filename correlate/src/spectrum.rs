@@ -93,8 +93,12 @@ impl Source for WeightedRow<'_> {
     }
 }
 
+/// The [`LANES`] numbers from `start` on: one whole vector.
+///
+/// # Panics
+/// If there are fewer.
 #[inline(always)]
-pub(in crate::interrogate) fn lanes_at(pixels: &[f32], start: usize) -> Lanes {
+pub fn lanes_at(pixels: &[f32], start: usize) -> Lanes {
     let mut lanes = [0.0; LANES];
     lanes.copy_from_slice(&pixels[start..start + LANES]);
     lanes

@@ -148,7 +148,7 @@ fn weights_and_masks_act_as_in_the_defining_sum() {
 // Source of the values: tests/outside/correlation_planes.py, numpy's double-precision FFT.
 #[test]
 fn planes_agree_with_a_general_purpose_numerical_library() {
-    let text = include_str!("../../../tests/data/correlation_planes.csv");
+    let text = include_str!("../../tests/data/correlation_planes.csv");
     let mut rows = text.lines().skip(1).map(|line| {
         let cells: Vec<&str> = line.split(',').collect();
         cells[5].parse::<f64>().unwrap()

@@ -89,7 +89,7 @@ impl WindowColumns {
     "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
     "x86_64+avx2+fma"
 ))]
-pub(in crate::interrogate) fn copy_weighted(
+pub fn copy_weighted(
     windows: &Windows,
     means: [&Lanes; 2],
     weights: &[f32],
