@@ -55,7 +55,10 @@ pub use peaks::{Peak, Peaks, Search};
 pub use planes::Planes;
 pub use spectrum::lanes_at;
 
-pub use windows::{Layout, Polyphase, PolyphaseRow, WindowColumns, Windows, copy_weighted, gather};
+pub use windows::{
+    Layout, Polyphase, PolyphaseRow, WindowColumns, Windows, copy_weighted, deinterleave, gather,
+    interleave,
+};
 
 use axis::{Axis, along};
 use lanes::Phasor;

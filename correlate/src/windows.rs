@@ -27,6 +27,11 @@ impl Layout {
             columns: (0..width).map(|column| column * LANES).collect(),
         }
     }
+
+    /// Where each column of a window lies, counted from the start of its row.
+    pub fn columns(&self) -> &[usize] {
+        &self.columns
+    }
 }
 
 /// A batch of [`LANES`] window pairs and, where something is masked, what is lit.
@@ -213,6 +218,11 @@ impl PolyphaseRow<'_> {
     pub fn fill(&mut self, pixels: &[f32]) {
         regroup(pixels, self.columns, self.places);
     }
+
+    /// The same value everywhere.
+    pub fn fill_with(&mut self, value: f32) {
+        self.places.fill(value);
+    }
 }
 
 /// Writes pixel left + (batch * LANES + i) * spacing + phase to place (batch, phase, i), in order;
@@ -283,12 +293,13 @@ pub fn gather(
 /// Side of the square tiles in which windows are interleaved.
 const TILE: usize = 4;
 
-/// Interleaves one row of each window; empty rows count as 0.
+/// Interleaves one row of each window, `out[column * LANES + lane]`; rows that are too short count
+/// as 0 beyond their end.
 #[multiversion(targets(
     "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
     "x86_64+avx2+fma"
 ))]
-fn interleave(rows: &[&[f32]; LANES], out: &mut [f32]) {
+pub fn interleave(rows: &[&[f32]; LANES], out: &mut [f32]) {
     let width = out.len() / LANES;
     let tiled = width - width % TILE;
     for quad in 0..LANES / TILE {
@@ -307,6 +318,37 @@ fn interleave(rows: &[&[f32]; LANES], out: &mut [f32]) {
         for column in if full { tiled } else { 0 }..width {
             for (i, row) in some.iter().enumerate() {
                 out[column * LANES + quad * TILE + i] = row.get(column).copied().unwrap_or(0.0);
+            }
+        }
+    }
+}
+
+/// The opposite of [`interleave`]: lane `i` of each column to `rows[i]`, as far as it goes.
+#[multiversion(targets(
+    "x86_64+avx512f+avx512vl+avx512bw+avx512dq+avx2+fma",
+    "x86_64+avx2+fma"
+))]
+pub fn deinterleave(from: &[f32], rows: &mut [&mut [f32]; LANES]) {
+    let width = from.len() / LANES;
+    let tiled = width - width % TILE;
+    for quad in 0..LANES / TILE {
+        let some = &mut rows[quad * TILE..][..TILE];
+        let full = some.iter().all(|row| row.len() == width);
+        for column in (0..if full { tiled } else { 0 }).step_by(TILE) {
+            let mut tile = [[0.0_f32; TILE]; TILE];
+            for (j, line) in tile.iter_mut().enumerate() {
+                line.copy_from_slice(&from[(column + j) * LANES + quad * TILE..][..TILE]);
+            }
+            for (i, row) in some.iter_mut().enumerate() {
+                let line = [tile[0][i], tile[1][i], tile[2][i], tile[3][i]];
+                row[column..][..TILE].copy_from_slice(&line);
+            }
+        }
+        for column in if full { tiled } else { 0 }..width {
+            for (i, row) in some.iter_mut().enumerate() {
+                if let Some(place) = row.get_mut(column) {
+                    *place = from[column * LANES + quad * TILE + i];
+                }
             }
         }
     }

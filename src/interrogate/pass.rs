@@ -1,22 +1,21 @@
 //! One pass: every window correlated, every peak read.
 
+use std::collections::VecDeque;
+
 use ndarray::Array2;
 use rayon::prelude::*;
 
-use super::deform::Deformed;
+use super::deform::{Exposures, Row};
 use super::layout::Layout;
 use super::peak::{Patch, Peak};
 use super::statistics::{StatisticsScratch, lean_variance, variance};
 use super::taper::Taper;
 use super::transform::{
     Correlator, LANES, Lanes, Moments, Planes, Polyphase, Scratch, Search, TransformError,
-    WindowColumns, Windows, copy_weighted,
+    WindowColumns, Windows, copy_weighted, lanes_at,
 };
 use super::transform::{Layout as PixelLayout, Peak as Sample};
 use crate::task::{Cancelled, Task};
-
-/// Rows of windows that one thread does in a stretch, so that what they share is regrouped once.
-const STRETCH: usize = 8;
 
 /// What the correlation of one window says.
 #[derive(Clone, Copy, Debug)]
@@ -41,9 +40,9 @@ impl Finding {
     };
 }
 
-/// One pass over a pair of deformed images.
+/// One pass over a pair.
 pub(crate) struct Pass<'a> {
-    images: &'a Deformed,
+    images: &'a Exposures<'a>,
     layout: &'a Layout,
     /// Columns, rows.
     tapers: [Taper; 2],
@@ -53,15 +52,13 @@ pub(crate) struct Pass<'a> {
     search: Search,
     /// Whether each vector gets its uncertainty.
     statistics: bool,
-    /// Lit pixels above and left of each pixel, where some are dark.
-    lit: Option<Vec<u32>>,
 }
 
 impl<'a> Pass<'a> {
     /// A pass over `layout`, peaks sought up to `reach` (columns, rows) px away, with the
     /// uncertainty of each vector if `statistics` is true.
     pub fn new(
-        images: &'a Deformed,
+        images: &'a Exposures<'a>,
         layout: &'a Layout,
         reach: (usize, usize),
         statistics: bool,
@@ -86,22 +83,29 @@ impl<'a> Pass<'a> {
                 exclusion: 2,
             },
             statistics,
-            lit: images.lit.as_ref().map(|lit| lit_sums(lit, images.width)),
         })
     }
 
     /// Correlates every window; stretches of rows share the cores.
     pub fn run(&self, task: &Task) -> Result<Array2<Finding>, Cancelled> {
-        let columns = self.layout.columns;
-        let mut out = vec![Finding::NOTHING; self.layout.rows * columns];
-        out.par_chunks_mut(columns * STRETCH)
+        let (rows, columns) = self.layout.shape();
+        let mut out = vec![Finding::NOTHING; rows * columns];
+        // Each stretch makes the rows under its first windows anew, so it should be long; none of
+        // them is made differently for it.
+        let threads = rayon::current_num_threads();
+        let stretch = match threads {
+            1 => rows,
+            threads => rows.div_ceil(2 * threads),
+        };
+        out.par_chunks_mut(columns * stretch)
             .enumerate()
             .map_init(
                 || Bench::new(self),
-                |bench, (stretch, rows)| {
-                    for (k, row) in rows.chunks_mut(columns).enumerate() {
+                |bench, (number, chunk)| {
+                    for (k, row) in chunk.chunks_mut(columns).enumerate() {
                         task.check()?;
-                        self.row(bench, stretch * STRETCH + k, k == 0, row);
+                        bench.advance(self, number * stretch + k, k == 0);
+                        self.row(bench, row);
                     }
                     Ok(())
                 },
@@ -111,14 +115,14 @@ impl<'a> Pass<'a> {
         Ok(shaped.unwrap_or_else(|_| unreachable!("one finding a window")))
     }
 
-    /// Correlates row `j` of windows; `fresh` when the bench does not hold the row above.
-    fn row(&self, bench: &mut Bench, j: usize, fresh: bool, out: &mut [Finding]) {
-        bench.advance(self, j, fresh);
+    /// Correlates the row of windows over the bench's band.
+    fn row(&self, bench: &mut Bench, out: &mut [Finding]) {
         for (batch, out) in out.chunks_mut(LANES).enumerate() {
+            let dark = bench.is_dark(batch);
             let windows = Windows {
                 first: bench.first.pixels(),
                 second: bench.second.pixels(),
-                lit: bench.lit.as_ref().map(Polyphase::pixels),
+                lit: dark.then(|| bench.lit.pixels()),
                 start: bench.first.start(0, batch),
                 layout: &bench.pixels,
             };
@@ -132,11 +136,15 @@ impl<'a> Pass<'a> {
             let leans = self
                 .statistics
                 .then(|| self.leans(&windows, &moments, &mut bench.statistics));
+            let lit = if dark {
+                bench.lit_shares(batch, self.layout.window.height)
+            } else {
+                [1.0; LANES]
+            };
             for (l, out) in out.iter_mut().enumerate() {
                 let norm = moments.normalization(l);
-                let lit = self.lit_share(j, batch * LANES + l);
                 *out = Finding {
-                    lit,
+                    lit: lit[l],
                     ..if norm > 0.0 {
                         let leans = leans.map(|axes| axes.map(|lanes| lanes[l]));
                         self.read(&bench.planes, l, peaks.first[l], norm, leans)
@@ -159,16 +167,6 @@ impl<'a> Pass<'a> {
         );
         let width = self.layout.window.width;
         lean_variance(&room.first, &room.second, width, &mut room.sums)
-    }
-
-    /// Share of the window in row `j`, column `i` that is lit.
-    fn lit_share(&self, j: usize, i: usize) -> f32 {
-        let Some(sums) = &self.lit else { return 1.0 };
-        let (top, left) = self.layout.corner(j, i);
-        let (w, h) = (self.layout.window.width, self.layout.window.height);
-        let at = |r: usize, c: usize| sums[r * (self.images.width + 1) + c];
-        let lit = at(top + h, left + w) + at(top, left) - at(top, left + w) - at(top + h, left);
-        lit as f32 / (w * h) as f32
     }
 
     /// Reads the highest peak of one plane.
@@ -209,27 +207,19 @@ impl<'a> Pass<'a> {
     }
 }
 
-/// Sums of lit pixels above and left of every corner of every pixel.
-fn lit_sums(lit: &[f32], width: usize) -> Vec<u32> {
-    let height = lit.len() / width;
-    let mut sums = vec![0u32; (width + 1) * (height + 1)];
-    for r in 0..height {
-        let mut run = 0;
-        for c in 0..width {
-            run += u32::from(lit[r * width + c] > 0.0);
-            sums[(r + 1) * (width + 1) + c + 1] = sums[r * (width + 1) + c + 1] + run;
-        }
-    }
-    sums
-}
-
 /// The workplace of one thread: the rows under the present windows, regrouped, and room for what
 /// is made of them.
 struct Bench {
     first: Polyphase,
     second: Polyphase,
-    lit: Option<Polyphase>,
+    lit: Polyphase,
+    /// Whether a row of the band is dark somewhere under a batch: [row][batch].
+    dark: VecDeque<Vec<bool>>,
+    /// Whether all of `lit` is 1.
+    all_lit: bool,
+    columns: WindowColumns,
     pixels: PixelLayout,
+    row: Row,
     planes: Planes,
     scratch: Scratch,
     statistics: Statistics,
@@ -252,7 +242,10 @@ impl Bench {
             width: layout.window.width,
         };
         let band = || Polyphase::new(layout.window.height, columns);
-        let first = band();
+        let (first, mut lit) = (band(), band());
+        for mut row in lit.rows_mut() {
+            row.fill_with(1.0);
+        }
         let pixels = if pass.statistics {
             layout.window.width * layout.window.height
         } else {
@@ -262,18 +255,23 @@ impl Bench {
             pixels: first.layout(),
             first,
             second: band(),
-            lit: pass.images.lit.as_ref().map(|_| band()),
+            lit,
+            all_lit: true,
+            dark: vec![vec![false; columns.batches()]; layout.window.height].into(),
+            columns,
+            row: Row::new(pass.images.width),
             planes: pass.correlator.planes(),
             scratch: pass.correlator.scratch(),
             statistics: Statistics {
                 first: vec![[0.0; LANES]; pixels],
                 second: vec![[0.0; LANES]; pixels],
-                sums: StatisticsScratch::new(pixels),
+                sums: StatisticsScratch::new(pixels, layout.window.width),
             },
         }
     }
 
-    /// Brings the pixels of row `j` of windows into the bands.
+    /// Brings the pixels of row `j` of windows into the bands; all of them when `fresh`, else
+    /// those that the row of windows above did not have.
     fn advance(&mut self, pass: &Pass, j: usize, fresh: bool) {
         let (top, _) = pass.layout.corner(j, 0);
         let height = pass.layout.window.height;
@@ -282,21 +280,57 @@ impl Bench {
         } else {
             pass.layout.step_y.min(height)
         };
-        let width = pass.images.width;
-        let images = pass.images;
-        let bands = [
-            (Some(&mut self.first), Some(&images.first)),
-            (Some(&mut self.second), Some(&images.second)),
-            (self.lit.as_mut(), images.lit.as_ref()),
-        ];
-        for (band, image) in bands {
-            let (Some(band), Some(image)) = (band, image) else {
-                continue;
-            };
-            band.scroll(new);
-            for (r, mut row) in band.rows_mut().enumerate().skip(height - new) {
-                row.fill(&image[(top + r) * width..][..width]);
+        self.first.scroll(new);
+        self.second.scroll(new);
+        if !self.all_lit {
+            self.lit.scroll(new);
+        }
+        self.dark.rotate_left(new);
+        let rows = self.first.rows_mut().zip(self.second.rows_mut());
+        let rows = rows.zip(self.lit.rows_mut()).zip(&mut self.dark);
+        for (r, (((mut first, mut second), mut lit), dark)) in rows.enumerate().skip(height - new) {
+            dark.fill(false);
+            if pass.images.row(top + r, &mut self.row) {
+                for (batch, dark) in dark.iter_mut().enumerate() {
+                    let left = self.columns.left + batch * LANES * self.columns.spacing;
+                    let end = left + (LANES - 1) * self.columns.spacing + self.columns.width;
+                    let end = end.min(pass.images.width);
+                    *dark = self.row.lit[left..end].contains(&0.0);
+                    self.all_lit &= !*dark;
+                }
+            }
+            first.fill(&self.row.first);
+            second.fill(&self.row.second);
+            if !self.all_lit {
+                lit.fill(&self.row.lit);
             }
         }
+        if !self.all_lit && !self.dark.iter().flatten().any(|dark| *dark) {
+            for mut row in self.lit.rows_mut() {
+                row.fill_with(1.0);
+            }
+            self.all_lit = true;
+        }
+    }
+
+    /// Whether a pixel of this batch's windows is dark.
+    fn is_dark(&self, batch: usize) -> bool {
+        self.dark.iter().any(|row| row[batch])
+    }
+
+    /// Share of each window of a batch that is lit.
+    fn lit_shares(&self, batch: usize, height: usize) -> Lanes {
+        let width = self.columns.width;
+        let mut sum = [0.0; LANES];
+        for row in 0..height {
+            let start = self.lit.start(row, batch);
+            for column in self.pixels.columns() {
+                let lit = lanes_at(self.lit.pixels(), start + column);
+                for l in 0..LANES {
+                    sum[l] += lit[l];
+                }
+            }
+        }
+        sum.map(|lit| lit / (width * height) as f32)
     }
 }

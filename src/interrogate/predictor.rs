@@ -1,5 +1,8 @@
 //! The displacement found so far, as a smooth field that can be read at every pixel.
 
+use std::ops::Range;
+
+use multiversion::multiversion;
 use ndarray::{Array2, ArrayViewMut1, Axis};
 
 use super::layout::Layout;
@@ -102,7 +105,7 @@ fn parabola_weights(m: usize) -> impl Iterator<Item = f64> {
 /// by straight lines past the outermost windows.
 pub(crate) struct Predictor {
     coefficients: Axes,
-    columns: Vec<Tap>,
+    columns: Runs,
     rows: Vec<Tap>,
     /// Where the windows lie, and how many coefficients stand before the first, along x and y.
     layout: Layout,
@@ -119,6 +122,69 @@ struct Axes {
 struct Tap {
     first: usize,
     weights: [f32; 4],
+}
+
+/// The taps of all pixels of a row: those that share their coefficients together.
+struct Runs {
+    /// First coefficient, and the pixels that begin there.
+    runs: Vec<(usize, Range<usize>)>,
+    /// Weights of the four coefficients at every pixel.
+    weights: [Vec<f32>; 4],
+}
+
+impl Runs {
+    fn new(taps: &[Tap]) -> Self {
+        let mut runs: Vec<(usize, Range<usize>)> = Vec::new();
+        for (pixel, tap) in taps.iter().enumerate() {
+            match runs.last_mut() {
+                Some((first, pixels)) if *first == tap.first => pixels.end = pixel + 1,
+                _ => runs.push((tap.first, pixel..pixel + 1)),
+            }
+        }
+        Self {
+            runs,
+            weights: std::array::from_fn(|k| taps.iter().map(|tap| tap.weights[k]).collect()),
+        }
+    }
+
+    /// The spline of `coefficients` at every pixel.
+    fn read(&self, coefficients: &[f32], out: &mut [f32]) {
+        read_runs(&self.runs, &self.weights, coefficients, out);
+    }
+}
+
+#[multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
+fn read_runs(
+    runs: &[(usize, Range<usize>)],
+    weights: &[Vec<f32>; 4],
+    coefficients: &[f32],
+    out: &mut [f32],
+) {
+    const BLOCK: usize = 8;
+    let [w0, w1, w2, w3] = weights;
+    for (first, pixels) in runs {
+        let c = &coefficients[*first..*first + 4];
+        let (c0, c1, c2, c3) = (c[0], c[1], c[2], c[3]);
+        let mut at = pixels.start;
+        while at + BLOCK <= pixels.end {
+            let range = at..at + BLOCK;
+            let w = (
+                &w0[range.clone()],
+                &w1[range.clone()],
+                &w2[range.clone()],
+                &w3[range.clone()],
+            );
+            let mut sum = [0f32; BLOCK];
+            for l in 0..BLOCK {
+                sum[l] = w.0[l] * c0 + w.1[l] * c1 + w.2[l] * c2 + w.3[l] * c3;
+            }
+            out[range].copy_from_slice(&sum);
+            at += BLOCK;
+        }
+        for i in at..pixels.end {
+            out[i] = w0[i] * c0 + w1[i] * c1 + w2[i] * c2 + w3[i] * c3;
+        }
+    }
 }
 
 impl Predictor {
@@ -142,7 +208,7 @@ impl Predictor {
                 x: coefficients(&shifts.x),
                 y: coefficients(&shifts.y),
             },
-            columns,
+            columns: Runs::new(&columns),
             rows,
             layout: *layout,
             pads: (pad_x, pad_y),
@@ -161,11 +227,7 @@ impl Predictor {
                     *sum += w * c;
                 }
             }
-            for (value, tap) in out.iter_mut().zip(&self.columns) {
-                let c = &line[tap.first..tap.first + 4];
-                let w = tap.weights;
-                *value = w[0] * c[0] + w[1] * c[1] + w[2] * c[2] + w[3] * c[3];
-            }
+            self.columns.read(line, out);
         }
     }
 

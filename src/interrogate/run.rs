@@ -4,7 +4,7 @@ use std::sync::Arc;
 
 use ndarray::{Array2, s};
 
-use super::deform::Deformed;
+use super::deform::Exposures;
 use super::layout::Layout;
 use super::pass::{Finding, Pass};
 use super::plan::{Plan, WindowSize};
@@ -123,26 +123,21 @@ pub fn interrogate_images(
     let mut last = None;
     for (pass, layout) in layouts.iter().enumerate() {
         task.check()?;
-        let (predictor, images) = match &known {
-            None => (None, Deformed::untouched(first, second, mask)),
-            Some((shifts, on)) => {
-                let [a, b] = match splines.take() {
-                    Some(made) => made,
-                    // Each takes a while on a large image.
-                    None => {
-                        let a = SplineImage::new(first);
-                        task.check()?;
-                        [a, SplineImage::new(second)]
-                    }
-                };
-                let [a, b] = splines.insert([a, b]);
-                task.check()?;
-                let predictor = Predictor::new(&shifts.smoothed(on), on, width, height);
-                let images = Deformed::new(a, b, &predictor, mask, (height, width));
-                (Some(predictor), images)
-            }
+        let predictor = known
+            .as_ref()
+            .map(|(shifts, on)| Predictor::new(&shifts.smoothed(on), on, width, height));
+        if predictor.is_some() && splines.is_none() {
+            // Each takes a while on a large image.
+            let a = SplineImage::new(first);
+            task.check()?;
+            splines = Some([a, SplineImage::new(second)]);
+            task.check()?;
+        }
+        let masks = [mask, mask];
+        let images = match (&predictor, &splines) {
+            (Some(predictor), Some([a, b])) => Exposures::moved([a, b], predictor, masks),
+            _ => Exposures::plain([first, second], masks),
         };
-        task.check()?;
         let reach = reach(layout.window, pass == 0);
         let is_last = pass + 1 == layouts.len();
         let findings = Pass::new(&images, layout, reach, is_last)?.run(task)?;

@@ -15,138 +15,170 @@ use super::transform::{LANES, Lanes};
 /// a little more than the width of a usual particle image.
 pub(crate) const REACH: usize = 3;
 
+/// Rows kept while sums over 2 [`REACH`] + 1 of them move on.
+const RING: usize = 2 * REACH + 2;
+
 /// Room for the sums of one window batch.
 pub(crate) struct StatisticsScratch {
+    /// Second windows smoothed; a window.
     soft: Vec<Lanes>,
+    /// Contributions, and their sums along the row: [`RING`] rows each.
     lean: Vec<Lanes>,
-    sums: Vec<Lanes>,
+    along: Vec<Lanes>,
+    /// Sums over the box round each px; a row.
+    boxes: Vec<Lanes>,
 }
 
 impl StatisticsScratch {
-    /// Room for windows of `pixels` px.
-    pub fn new(pixels: usize) -> Self {
+    /// Room for windows of `pixels` px in rows of `width`.
+    pub fn new(pixels: usize, width: usize) -> Self {
+        let room = |cells: usize| vec![[0.0; LANES]; cells];
         Self {
-            soft: vec![[0.0; LANES]; pixels],
-            lean: vec![[0.0; LANES]; pixels],
-            sums: vec![[0.0; LANES]; pixels],
+            soft: room(pixels),
+            lean: room(RING * width),
+            along: room(RING * width),
+            boxes: room(width),
         }
     }
 }
 
 /// Variance of (right minus left) and of (below minus above) samples of the smoothed peak, for a
 /// batch of windows `a` and `b` of `width` columns, row after row.
-#[multiversion::multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
 pub(crate) fn lean_variance(
     a: &[Lanes],
     b: &[Lanes],
     width: usize,
     scratch: &mut StatisticsScratch,
 ) -> [Lanes; 2] {
-    let height = a.len() / width;
     soften(b, width, &mut scratch.soft);
-    [(0, 1), (1, 0)].map(|(down, right)| {
-        let (rows, columns) = (height - down, width - right);
-        let lean = &mut scratch.lean[..rows * columns];
-        let mut mean = [0f32; LANES];
-        for r in 0..rows {
-            let here = r * width;
-            let next = (r + down) * width + right;
-            for c in 0..columns {
-                let (a0, a1) = (&a[here + c], &a[next + c]);
-                let (b0, b1) = (&scratch.soft[here + c], &scratch.soft[next + c]);
-                let out = &mut lean[r * columns + c];
-                for l in 0..LANES {
-                    out[l] = a0[l] * b1[l] - a1[l] * b0[l];
-                    mean[l] += out[l];
-                }
-            }
-        }
-        let n = (rows * columns) as f32;
-        for cell in lean.iter_mut() {
-            for l in 0..LANES {
-                cell[l] -= mean[l] / n;
-            }
-        }
-        spread(lean, columns, &mut scratch.sums)
-    })
+    [
+        spread::<0, 1>(a, width, scratch),
+        spread::<1, 0>(a, width, scratch),
+    ]
 }
 
 /// Smooths as the peak is smoothed: (1, 6, 1)/8 along rows and columns, edges left as they are.
-#[inline(always)]
+#[multiversion::multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
 fn soften(from: &[Lanes], width: usize, to: &mut [Lanes]) {
-    const NEAR: f32 = 0.125;
     let height = from.len() / width;
-    to.copy_from_slice(from);
+    to[..width].copy_from_slice(&from[..width]);
+    let last = (height - 1) * width;
+    to[last..].copy_from_slice(&from[last..]);
     for r in 1..height - 1 {
+        let [above, here, below] = [r - 1, r, r + 1].map(|r| &from[r * width..][..width]);
+        let to = &mut to[r * width..][..width];
+        (to[0], to[width - 1]) = (here[0], here[width - 1]);
+        let (mut before, mut middle) = (
+            blend(above[0], here[0], below[0]),
+            blend(above[1], here[1], below[1]),
+        );
         for c in 1..width - 1 {
-            let p = r * width + c;
-            let mut sum = [0f32; LANES];
-            for (k, wy) in [NEAR, 1.0 - 2.0 * NEAR, NEAR].into_iter().enumerate() {
-                let q = p + k * width - width;
-                for l in 0..LANES {
-                    sum[l] += wy
-                        * (NEAR * (from[q - 1][l] + from[q + 1][l])
-                            + (1.0 - 2.0 * NEAR) * from[q][l]);
-                }
-            }
-            to[p] = sum;
+            let after = blend(above[c + 1], here[c + 1], below[c + 1]);
+            to[c] = blend(before, middle, after);
+            (before, middle) = (middle, after);
         }
     }
 }
 
-/// Sum over pixels of each value times the sum of all values within [`REACH`] of it: the
-/// variance of the total, covariance of neighbours included.
+/// (1, 6, 1)/8 of three neighbours.
 #[inline(always)]
-fn spread(values: &[Lanes], width: usize, sums: &mut [Lanes]) -> Lanes {
-    let height = values.len() / width;
-    // Running sums along each row, then along columns.
-    for r in 0..height {
-        let row = &values[r * width..(r + 1) * width];
-        let mut run = [0f32; LANES];
-        for cell in &row[..REACH.min(width)] {
-            for l in 0..LANES {
-                run[l] += cell[l];
+fn blend(before: Lanes, here: Lanes, after: Lanes) -> Lanes {
+    let mut sum = [0f32; LANES];
+    for l in 0..LANES {
+        sum[l] = 0.125 * (before[l] + after[l]) + 0.75 * here[l];
+    }
+    sum
+}
+
+/// Variance, by lane, of the sum over px of a(x) b(x + d) - a(x + d) b(x), b smoothed and
+/// d = ([`RIGHT`], `DOWN`) px: each contribution less the mean of all times the same within
+/// [`REACH`] of it, summed.
+///
+/// With c the contributions, m their mean and n the px within reach of each, that is
+/// sum c box(c) - 2 m sum n c + m² sum n, so that c is made once and never stored whole.
+#[multiversion::multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
+fn spread<const DOWN: usize, const RIGHT: usize>(
+    a: &[Lanes],
+    width: usize,
+    scratch: &mut StatisticsScratch,
+) -> Lanes {
+    let (rows, columns) = (a.len() / width - DOWN, width - RIGHT);
+    let within = |i: usize, n: usize| (i + REACH).min(n - 1) - i.saturating_sub(REACH) + 1;
+    let StatisticsScratch {
+        soft,
+        lean,
+        along,
+        boxes,
+    } = scratch;
+    let boxes = &mut boxes[..columns];
+    boxes.fill([0.0; LANES]);
+    let place = |r: usize| (r % RING) * width;
+    let (mut total, mut sum, mut counted) = ([0f32; LANES], [0f32; LANES], [0f32; LANES]);
+    for r in 0..rows + REACH {
+        if r < rows {
+            let (here, there) = (r * width, (r + DOWN) * width + RIGHT);
+            let (a0, a1) = (&a[here..][..columns], &a[there..][..columns]);
+            let (b0, b1) = (&soft[here..][..columns], &soft[there..][..columns]);
+            let lean = &mut lean[place(r)..][..columns];
+            let n_row = within(r, rows) as f32;
+            for c in 0..columns {
+                let n = n_row * within(c, columns) as f32;
+                let mut out = [0f32; LANES];
+                for l in 0..LANES {
+                    out[l] = a0[c][l] * b1[c][l] - a1[c][l] * b0[c][l];
+                    sum[l] += out[l];
+                    counted[l] += n * out[l];
+                }
+                lean[c] = out;
+            }
+            let along = &mut along[place(r)..][..columns];
+            let mut run = [0f32; LANES];
+            for cell in &lean[..REACH.min(columns)] {
+                for l in 0..LANES {
+                    run[l] += cell[l];
+                }
+            }
+            for c in 0..columns {
+                if c + REACH < columns {
+                    for l in 0..LANES {
+                        run[l] += lean[c + REACH][l];
+                    }
+                }
+                if c > REACH {
+                    for l in 0..LANES {
+                        run[l] -= lean[c - REACH - 1][l];
+                    }
+                }
+                along[c] = run;
+                for l in 0..LANES {
+                    boxes[c][l] += run[l];
+                }
             }
         }
-        for c in 0..width {
-            if c + REACH < width {
+        if r > 2 * REACH {
+            for (sum, old) in boxes.iter_mut().zip(&along[place(r - 2 * REACH - 1)..]) {
                 for l in 0..LANES {
-                    run[l] += row[c + REACH][l];
+                    sum[l] -= old[l];
                 }
             }
-            if c > REACH {
+        }
+        if r >= REACH {
+            for (sum, c) in boxes.iter().zip(&lean[place(r - REACH)..]) {
                 for l in 0..LANES {
-                    run[l] -= row[c - REACH - 1][l];
+                    total[l] += sum[l] * c[l];
                 }
             }
-            sums[r * width + c] = run;
         }
     }
-    let mut total = [0f32; LANES];
-    for c in 0..width {
-        let mut run = [0f32; LANES];
-        for r in 0..REACH.min(height) {
-            for l in 0..LANES {
-                run[l] += sums[r * width + c][l];
-            }
-        }
-        for r in 0..height {
-            if r + REACH < height {
-                for l in 0..LANES {
-                    run[l] += sums[(r + REACH) * width + c][l];
-                }
-            }
-            if r > REACH {
-                for l in 0..LANES {
-                    run[l] -= sums[(r - REACH - 1) * width + c][l];
-                }
-            }
-            for l in 0..LANES {
-                total[l] += run[l] * values[r * width + c][l];
-            }
-        }
+    let all = |n: usize| (0..n).map(|i| within(i, n)).sum::<usize>() as f32;
+    let pairs = all(rows) * all(columns);
+    let n = (rows * columns) as f32;
+    let mut out = [0f32; LANES];
+    for l in 0..LANES {
+        let mean = sum[l] / n;
+        out[l] = total[l] - 2.0 * mean * counted[l] + mean * mean * pairs;
     }
-    total
+    out
 }
 
 /// Variance, px², of the three-point fit whose middle sample is `top` and whose side samples
@@ -194,24 +226,45 @@ mod tests {
 
     #[test]
     fn the_spread_is_the_plain_double_sum() {
-        let (width, height) = (9, 11);
-        let values: Vec<Lanes> = (0..width * height)
-            .map(|i| std::array::from_fn(|l| ((i * 7 + l * 13) % 23) as f32 - 11.0))
-            .collect();
-        let mut sums = vec![[0.0; LANES]; width * height];
-        let fast = spread(&values, width, &mut sums);
-        for l in 0..LANES {
-            let mut slow = 0.0;
-            for i in 0..width * height {
-                for k in 0..width * height {
-                    let near = (i / width).abs_diff(k / width) <= REACH
-                        && (i % width).abs_diff(k % width) <= REACH;
-                    if near {
-                        slow += values[i][l] * values[k][l];
+        // Windows longer and shorter than the sums reach.
+        for (width, height) in [(9, 11), (4, 4), (16, 5), (32, 32)] {
+            let pixel = |i: usize, l: usize, k: usize| ((i * k + l * 13) % 23) as f32 - 11.0;
+            let windows = [7, 5].map(|k| -> Vec<Lanes> {
+                (0..width * height)
+                    .map(|i| std::array::from_fn(|l| pixel(i, l, k)))
+                    .collect()
+            });
+            let mut scratch = StatisticsScratch::new(width * height, width);
+            let fast = lean_variance(&windows[0], &windows[1], width, &mut scratch);
+            let soft = &scratch.soft;
+            for (axis, (down, right)) in [(0, 1), (1, 0)].into_iter().enumerate() {
+                let (rows, columns) = (height - down, width - right);
+                for l in [0, 7, LANES - 1] {
+                    let lean: Vec<f64> = (0..rows * columns)
+                        .map(|i| {
+                            let here = i / columns * width + i % columns;
+                            let there = here + down * width + right;
+                            let (a, b) = (&windows[0], soft);
+                            f64::from(a[here][l] * b[there][l] - a[there][l] * b[here][l])
+                        })
+                        .collect();
+                    let mean = lean.iter().sum::<f64>() / lean.len() as f64;
+                    let mut slow = 0.0;
+                    let mut size = 0.0;
+                    for i in 0..lean.len() {
+                        for k in 0..lean.len() {
+                            let near = (i / columns).abs_diff(k / columns) <= REACH
+                                && (i % columns).abs_diff(k % columns) <= REACH;
+                            if near {
+                                slow += (lean[i] - mean) * (lean[k] - mean);
+                                size += ((lean[i] - mean) * (lean[k] - mean)).abs();
+                            }
+                        }
                     }
+                    let off = (f64::from(fast[axis][l]) - slow).abs();
+                    assert!(off < 1e-5 * size, "{width} x {height}: {off} of {size}");
                 }
             }
-            assert!((fast[l] - slow).abs() < 1e-3 * slow.abs().max(1.0));
         }
     }
 
