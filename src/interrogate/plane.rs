@@ -133,8 +133,9 @@ pub struct PlanePeak {
     /// Highest sample, a correlation coefficient.
     pub height: f64,
     /// Diameter along x and y, px, at which the Gaussian through the three samples about the
-    /// highest has fallen to e⁻² of its top: four of its standard deviations, √2 times the diameter
-    /// of the particle images where the peak is theirs. `None` where the samples allow no Gaussian.
+    /// highest has fallen to e⁻² of its top: four of its standard deviations. Particle images of
+    /// diameter d at e⁻² make a peak √2 √(d² + 4/3 px²) wide, 4/3 being what a pixel adds. `None`
+    /// where the samples allow no Gaussian.
     pub width_px: (Option<f64>, Option<f64>),
     /// Height over that of the next lower peak; `None` for the lowest.
     pub ratio: Option<f64>,

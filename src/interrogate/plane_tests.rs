@@ -1,18 +1,29 @@
 use super::*;
 
-/// A Gaussian of this standard deviation about `at` (right, down) with what the weights leave of a
-/// pattern moved that far.
-fn gaussians(side: usize, peaks: &[(f64, (f64, f64), (f64, f64))]) -> RawPlane {
+/// A Gaussian of this height and these standard deviations about `at` (right, down).
+struct Hill {
+    height: f64,
+    at: (f64, f64),
+    sides: (f64, f64),
+}
+
+fn hill(height: f64, at: (f64, f64), sides: (f64, f64)) -> Hill {
+    Hill { height, at, sides }
+}
+
+/// The hills with what the weights leave of a pattern moved that far.
+fn gaussians(side: usize, hills: &[Hill]) -> RawPlane {
     let blank = RawPlane::of_coefficients(Array2::zeros((side, side)));
     let n = side as i32;
     let offset = |k: usize| if k < side / 2 { k as i32 } else { k as i32 - n };
     let samples = Array2::from_shape_fn((side, side), |(row, column)| {
         let (x, y) = (offset(column), offset(row));
-        let gaussian = |(height, at, s): &(f64, (f64, f64), (f64, f64))| {
-            let (x, y) = ((f64::from(x) - at.0) / s.0, (f64::from(y) - at.1) / s.1);
-            height * (-0.5 * (x * x + y * y)).exp()
+        let gaussian = |hill: &Hill| {
+            let across = (f64::from(x) - hill.at.0) / hill.sides.0;
+            let down = (f64::from(y) - hill.at.1) / hill.sides.1;
+            hill.height * (-0.5 * (across * across + down * down)).exp()
         };
-        let sum: f64 = peaks.iter().map(gaussian).sum();
+        let sum: f64 = hills.iter().map(gaussian).sum();
         sum as f32 * blank.left((x, y))
     });
     RawPlane::of_coefficients(samples)
@@ -23,9 +34,9 @@ fn peaks_of_gaussians_have_their_place_width_and_order() {
     let raw = gaussians(
         64,
         &[
-            (0.3, (-12.0, 9.25), (1.1, 1.1)),
-            (0.8, (3.25, -2.5), (0.95, 1.4)),
-            (0.1, (20.5, 20.0), (1.2, 1.2)),
+            hill(0.3, (-12.0, 9.25), (1.1, 1.1)),
+            hill(0.8, (3.25, -2.5), (0.95, 1.4)),
+            hill(0.1, (20.5, 20.0), (1.2, 1.2)),
         ],
     );
     let shift = Shift {
@@ -60,8 +71,8 @@ fn a_peak_at_the_rim_is_one_and_a_flat_plane_has_none() {
     let raw = gaussians(
         32,
         &[
-            (0.5, (15.6, 0.0), (1.0, 1.0)),
-            (0.5, (-16.4, 0.0), (1.0, 1.0)),
+            hill(0.5, (15.6, 0.0), (1.0, 1.0)),
+            hill(0.5, (-16.4, 0.0), (1.0, 1.0)),
         ],
     );
     assert_eq!(raw.peaks().len(), 1);
