@@ -402,6 +402,18 @@ const FOLDERS_AND_TABLES: &[Case] = &[
 
 const VALUES: &[Case] = &[
     (
+        "pair.plane(400, 10);",
+        &[],
+        1,
+        "synthetic pair: the point (400, 10) px is outside the image, which covers x -0.5 to 63.5 and y -0.5 to 63.5 px",
+    ),
+    (
+        "pair.plane(exact(3, \"mm\"), 10);",
+        &[],
+        1,
+        "mm and px do not go together",
+    ),
+    (
         "measured(1, 0.1, \"mm\") + exact(1, \"px\");",
         &[],
         1,

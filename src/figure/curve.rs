@@ -267,7 +267,10 @@ pub(crate) fn draw_sample(scene: &mut Scene, [x, y]: Point, index: usize, look: 
     let (colour, stroke) = manner(index);
     match look {
         Look::Line => scene.stroke(Path::segment([x, y], [x + SAMPLE_MM, y]), stroke),
-        Look::Points => {
+        Look::Points | Look::Fitted => {
+            if look == Look::Fitted {
+                scene.stroke(Path::segment([x, y], [x + SAMPLE_MM, y]), stroke);
+            }
             let mut mark = Path::new();
             add_mark(&mut mark, [x + 0.5 * SAMPLE_MM, y], index);
             draw_marks(scene, mark, colour);
@@ -292,6 +295,7 @@ pub(crate) const SAMPLE_MM: f64 = 8.0;
 pub(crate) enum Look {
     Line,
     Points,
+    Fitted,
     Bars,
 }
 

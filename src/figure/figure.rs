@@ -7,6 +7,7 @@ use super::arrows::ArrowOptions;
 use super::curve::{Bars, Curve};
 use super::error::FigureError;
 use super::layer::Layer;
+use super::marks::MarkSet;
 use super::outlines::OutlineSet;
 use super::scene::Scene;
 use super::shade::ShadeOptions;
@@ -39,6 +40,7 @@ pub struct Figure {
     pub(crate) panels: Vec<Figure>,
     pub(crate) columns: usize,
     pub(crate) title: Option<String>,
+    pub(crate) caption: Option<String>,
     pub(crate) x_label: Option<String>,
     pub(crate) y_label: Option<String>,
     pub(crate) width_mm: Option<f64>,
@@ -89,6 +91,11 @@ impl Figure {
         self.with(Layer::Outlines(outlines.into()))
     }
 
+    /// Draws numbered places, and rectangles that bound a part of a map.
+    pub fn marks(self, marks: impl Into<Arc<MarkSet>>) -> Self {
+        self.with(Layer::Marks(marks.into()))
+    }
+
     /// Draws a curve, with a band where it has one.
     pub fn line(self, curve: impl Into<Arc<Curve>>) -> Self {
         self.with(Layer::Line(curve.into()))
@@ -97,6 +104,12 @@ impl Figure {
     /// Draws points, with upright bars where the curve has a band.
     pub fn points(self, curve: impl Into<Arc<Curve>>) -> Self {
         self.with(Layer::Points(curve.into()))
+    }
+
+    /// Draws points with the line that was fitted to them, in one colour and as one entry of the
+    /// legend, which has the points' name.
+    pub fn fitted(self, points: impl Into<Arc<Curve>>, line: impl Into<Arc<Curve>>) -> Self {
+        self.with(Layer::Fitted(points.into(), line.into()))
     }
 
     /// Draws values along a line through a field against the distance along it.
@@ -122,6 +135,12 @@ impl Figure {
     /// Words over the figure; long ones are broken into lines.
     pub fn title(mut self, words: &str) -> Self {
         self.title = Some(words.to_owned());
+        self
+    }
+
+    /// Words under the figure; long ones are broken into lines.
+    pub fn caption(mut self, words: &str) -> Self {
+        self.caption = Some(words.to_owned());
         self
     }
 

@@ -6,6 +6,7 @@ use super::arrows::ArrowOptions;
 use super::axis::Span;
 use super::curve::{Bars, Curve, Look};
 use super::error::FigureError;
+use super::marks::MarkSet;
 use super::outlines::OutlineSet;
 use super::shade::ShadeOptions;
 use crate::field::{Grid, ScalarField, VectorField};
@@ -17,8 +18,11 @@ pub(crate) enum Layer {
     Shade(Arc<ScalarField>, ShadeOptions),
     Arrows(Arc<VectorField>, ArrowOptions),
     Outlines(Arc<OutlineSet>),
+    Marks(Arc<MarkSet>),
     Line(Arc<Curve>),
     Points(Arc<Curve>),
+    /// Points with the line fitted to them.
+    Fitted(Arc<Curve>, Arc<Curve>),
     Bars(Arc<Bars>),
     /// An upright line at x with its label.
     Marker(f64, String),
@@ -45,7 +49,8 @@ impl Layer {
             Layer::Shade(field, _) => field.name.clone(),
             Layer::Arrows(..) => "the vector field".to_owned(),
             Layer::Outlines(_) => "the outlines".to_owned(),
-            Layer::Line(c) | Layer::Points(c) => c.name.clone(),
+            Layer::Marks(_) => "the marks".to_owned(),
+            Layer::Line(c) | Layer::Points(c) | Layer::Fitted(c, _) => c.name.clone(),
             Layer::Bars(b) => b.name.clone(),
             Layer::Marker(..) => "the marker".to_owned(),
             Layer::Level(..) => "the level".to_owned(),
@@ -56,7 +61,7 @@ impl Layer {
     pub fn is_map(&self) -> bool {
         matches!(
             self,
-            Layer::Shade(..) | Layer::Arrows(..) | Layer::Outlines(_)
+            Layer::Shade(..) | Layer::Arrows(..) | Layer::Outlines(_) | Layer::Marks(_)
         )
     }
 
@@ -66,7 +71,8 @@ impl Layer {
             Layer::Shade(f, _) => Some((f.grid.length, f.grid.length)),
             Layer::Arrows(f, _) => Some((f.grid.length, f.grid.length)),
             Layer::Outlines(set) => Some((set.length, set.length)),
-            Layer::Line(c) | Layer::Points(c) => Some((c.x_unit, c.y_unit)),
+            Layer::Marks(set) => Some((set.unit, set.unit)),
+            Layer::Line(c) | Layer::Points(c) | Layer::Fitted(c, _) => Some((c.x_unit, c.y_unit)),
             Layer::Bars(b) => Some((b.x_unit, b.y_unit)),
             Layer::Marker(..) | Layer::Level(..) => None,
         }
@@ -88,7 +94,14 @@ impl Layer {
                     Span::of(points().map(|p| p[1])),
                 )
             }
+            Layer::Marks(set) => set.spans(),
             Layer::Line(c) | Layer::Points(c) => c.spans(log),
+            Layer::Fitted(points, line) => {
+                let ((mut x, mut y), line) = (points.spans(log), line.spans(log));
+                x.join(line.0);
+                y.join(line.1);
+                (x, y)
+            }
             Layer::Bars(b) => b.spans(log),
             Layer::Marker(x, _) => (Span::of([*x]), Span::NOTHING),
             Layer::Level(y, _) => (Span::NOTHING, Span::of([*y])),
@@ -98,7 +111,7 @@ impl Layer {
     /// Names of x and y as the axes show them; empty where there is none.
     pub fn axis_names(&self) -> (&str, &str) {
         match self {
-            Layer::Line(c) | Layer::Points(c) => (&c.x_name, &c.name),
+            Layer::Line(c) | Layer::Points(c) | Layer::Fitted(c, _) => (&c.x_name, &c.name),
             Layer::Bars(b) => (&b.x_name, &b.name),
             layer if layer.is_map() => ("x", "y"),
             _ => ("", ""),
@@ -110,6 +123,7 @@ impl Layer {
         match self {
             Layer::Line(c) => Some((Look::Line, &c.name)),
             Layer::Points(c) => Some((Look::Points, &c.name)),
+            Layer::Fitted(c, _) => Some((Look::Fitted, &c.name)),
             Layer::Bars(b) => Some((Look::Bars, &b.name)),
             _ => None,
         }
@@ -118,6 +132,7 @@ impl Layer {
     pub fn check(&self) -> Result<(), FigureError> {
         match self {
             Layer::Line(c) | Layer::Points(c) => c.check(),
+            Layer::Fitted(points, line) => points.check().and_then(|()| line.check()),
             Layer::Bars(b) => b.check(),
             Layer::Marker(v, label) | Layer::Level(v, label) if !v.is_finite() => {
                 Err(FigureError::NothingFinite(format!("the line {label:?}")))

@@ -1,6 +1,7 @@
 //! Where everything stands: margins measured, plot and sheet sized, in mm.
 
 use super::axis::{Axis, Plot};
+use super::caption;
 use super::error::FigureError;
 use super::figure::Figure;
 use super::scene::{Rect, Scene, Style};
@@ -54,9 +55,14 @@ struct Margins {
 
 /// The title broken into lines that fit a sheet `width` wide.
 pub(crate) fn title_lines(figure: &Figure, width: f64) -> Vec<String> {
-    let style = Style::plain(TITLE_MM).medium();
+    let words = figure.title.as_deref().unwrap_or("");
+    broken(words, Style::plain(TITLE_MM).medium(), width)
+}
+
+/// Words broken into lines that fit a sheet `width` wide.
+pub(crate) fn broken(words: &str, style: Style, width: f64) -> Vec<String> {
     let mut lines: Vec<String> = Vec::new();
-    for word in figure.title.as_deref().unwrap_or("").split_whitespace() {
+    for word in words.split_whitespace() {
         match lines.last_mut() {
             Some(line) if style.width(&format!("{line} {word}")) <= width - 2.0 * PAD => {
                 line.push(' ');
@@ -156,7 +162,7 @@ fn place(settled: &Settled, width: f64, left: f64, over: f64) -> Result<Layout, 
         left,
         right,
         top: PAD + titles * TITLE_LINE + legend + LABEL_LINE,
-        bottom: FOOT,
+        bottom: FOOT + caption::height(settled.figure, width),
     };
     let (w, h) = plot_size(settled, room, &margins)?;
     let upright = margins.top + margins.bottom;

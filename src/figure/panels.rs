@@ -1,8 +1,9 @@
 //! Several figures on one sheet.
 
+use super::caption;
 use super::error::FigureError;
 use super::figure::Figure;
-use super::layout::{FOOT, PAD, WIDTH_MM, draw_title, title_lines};
+use super::layout::{PAD, WIDTH_MM, draw_title, title_lines};
 use super::scene::Scene;
 use super::sheet::{Stand, stand};
 
@@ -21,10 +22,11 @@ pub(crate) fn scene(figure: &Figure, dots_per_mm: f64) -> Result<Scene, FigureEr
     } else {
         PAD + 4.6 * lines.len() as f64
     };
+    let below = caption::height(figure, width);
     let each = (width - GAP * (columns - 1) as f64) / columns as f64;
     let height = figure
         .height_mm
-        .map(|h| (h - top - GAP * (rows - 1) as f64) / rows as f64);
+        .map(|h| (h - top - below - GAP * (rows - 1) as f64) / rows as f64);
     let mut scene = Scene::new(width, top);
     let mut y = top;
     for row in figure.panels.chunks(columns) {
@@ -40,8 +42,9 @@ pub(crate) fn scene(figure: &Figure, dots_per_mm: f64) -> Result<Scene, FigureEr
         }
         y += tallest + GAP;
     }
-    scene.height = y - GAP;
+    scene.height = y - GAP + below;
     draw_title(&mut scene, &lines);
+    caption::draw(&mut scene, figure);
     Ok(scene)
 }
 
@@ -70,7 +73,7 @@ fn aligned(row: Vec<Figure>) -> Result<Vec<(Figure, f64)>, FigureError> {
     let mut row = row;
     for (panel, stand) in row.iter_mut().zip(&before) {
         if let Some(stand) = stand {
-            panel.height_mm = Some(stand.top + height.max(stand.least) + FOOT);
+            panel.height_mm = Some(stand.top + height.max(stand.least) + stand.foot);
         }
     }
     let after = stands(&row)?;

@@ -68,7 +68,7 @@ pub(crate) fn settle(figure: &Figure) -> Result<Settled<'_>, FigureError> {
     }
     let is_map = layers.iter().any(Layer::is_map);
     let room = if is_map { 0.0 } else { 0.06 };
-    let ends_free = |l: &Layer| matches!(l, Layer::Line(_) | Layer::Points(_));
+    let ends_free = |l: &Layer| matches!(l, Layer::Line(_) | Layer::Points(_) | Layer::Fitted(..));
     let side_room = if !is_map && layers.iter().any(ends_free) {
         0.03
     } else {

@@ -2,6 +2,7 @@
 
 use super::arrows::Fitted;
 use super::axis::Plot;
+use super::caption;
 use super::colour::{FAINT, INK, MUTED};
 use super::error::FigureError;
 use super::figure::Figure;
@@ -9,8 +10,8 @@ use super::font::CAPITAL;
 use super::key::with_unit;
 use super::layer::Layer;
 use super::layout::{
-    KEY_GAP, LABEL_LINE, LABEL_MM, LEAST_PLOT, LONG, Layout, NUMBER_LINE, NUMBER_MM, SHORT,
-    draw_title, lay_out, least_height, title_lines, widest,
+    FOOT, KEY_GAP, LABEL_LINE, LABEL_MM, LEAST_PLOT, LONG, Layout, NUMBER_LINE, NUMBER_MM, SHORT,
+    WIDTH_MM, draw_title, lay_out, least_height, title_lines, widest,
 };
 use super::outlines::{self, Placed};
 use super::placement::{Placement, base_line, text_box};
@@ -33,6 +34,8 @@ pub(crate) struct Stand {
     pub is_map: bool,
     /// Least height it can be drawn with, its key beside it.
     pub least: f64,
+    /// Room under the plot.
+    pub foot: f64,
 }
 
 pub(crate) fn stand(figure: &Figure) -> Result<Stand, FigureError> {
@@ -43,6 +46,7 @@ pub(crate) fn stand(figure: &Figure) -> Result<Stand, FigureError> {
         height: rect.h,
         is_map: settled.is_map,
         least: least_height(&settled).max(LEAST_PLOT),
+        foot: FOOT + caption::height(figure, figure.width_mm.unwrap_or(WIDTH_MM)),
     })
 }
 
@@ -101,6 +105,12 @@ impl Settled<'_> {
                 (Layer::Points(c), ..) => {
                     scene.clipped(plot.rect.grown(1.0), |s| c.draw_points(s, plot, number));
                 }
+                (Layer::Fitted(points, line), ..) => {
+                    scene.clipped(plot.rect, |s| line.draw_line(s, plot, number));
+                    let rect = plot.rect.grown(1.0);
+                    scene.clipped(rect, |s| points.draw_points(s, plot, number));
+                }
+                (Layer::Marks(set), ..) => set.draw(scene, plot),
                 (Layer::Bars(b), ..) => {
                     scene.clipped(plot.rect, |s| b.draw(s, plot, number));
                 }
@@ -115,7 +125,7 @@ impl Settled<'_> {
         let rect = plot.rect;
         let mut placement = Placement::new(rect.grown(-0.4));
         for layer in &self.figure.layers {
-            if let Layer::Line(c) | Layer::Points(c) = layer {
+            if let Layer::Line(c) | Layer::Points(c) | Layer::Fitted(_, c) = layer {
                 c.take(&mut placement, plot);
             }
         }
@@ -194,6 +204,7 @@ impl Settled<'_> {
         let left = rect.x - LONG - 1.2 - widest(ty);
         scene.text([left, rect.y - 2.0], &y_words, style);
         draw_title(scene, &title_lines(self.figure, scene.width));
+        caption::draw(scene, self.figure);
         let legend = self.legend();
         let top = rect.y - LABEL_LINE - legend.height(rect.w);
         legend.draw(scene, [left, top - 0.3], rect.w);

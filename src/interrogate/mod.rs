@@ -3,8 +3,9 @@
 //! [`interrogate`] runs the passes of a [`Plan`] over one pair. Each pass deforms both exposures
 //! by half of what the passes before found (`deform`, `predictor`), correlates every window
 //! (`transform`), finds the residual shift from the peak (`peak`), and tests each vector against
-//! its neighbours (`validate`). Inside this room arrays follow the image: row 0 is the top row
-//! and a positive row shift points down; only the finished field has y pointing up.
+//! its neighbours (`validate`). [`correlation_plane`] shows what one vector was read from. Inside
+//! this room arrays follow the image: row 0 is the top row and a positive row shift points down;
+//! only the finished field and plane have y pointing up.
 //!
 //! Reading files, eddies and statistics live elsewhere.
 
@@ -13,7 +14,9 @@ mod layout;
 mod pass;
 mod peak;
 mod plan;
+mod plane;
 mod predictor;
+mod raw_plane;
 mod response;
 mod run;
 mod spline;
@@ -23,4 +26,5 @@ mod validate;
 
 pub use kolk_correlate as transform;
 pub use plan::{Plan, PlanError, PlanOptions, WindowSize};
+pub use plane::{CorrelationPlane, PlaneError, PlanePeak, correlation_plane};
 pub use run::{ALGORITHM, InterrogateError, blank_field, interrogate, interrogate_images};

@@ -99,7 +99,7 @@ pub fn interrogate_images(
     label: &str,
     task: &Task,
 ) -> Result<VectorField, InterrogateError> {
-    let (height, width) = first.dim();
+    let height = first.nrows();
     let size = |(h, w): (usize, usize)| format!("{w} x {h}");
     if second.dim() != first.dim() {
         return Err(InterrogateError::SizesDiffer {
@@ -117,10 +117,47 @@ pub fn interrogate_images(
             image: size(first.dim()),
         });
     }
+    let view = before_last_pass(first, second, mask, plan, label, task)?;
+    let findings = Pass::new(&view.images, &view.layout, view.reach, true)?.run(task)?;
+    let judged = judge(&findings, &view.layout, view.predictor.as_ref(), mask, plan);
+    Ok(finish(
+        (judged, findings),
+        plan.error_model(),
+        &view.layout,
+        height,
+        scale,
+        label,
+    ))
+}
+
+/// What the last pass of a plan has before it.
+pub(super) struct LastView {
+    /// Both exposures, moved to the mid time by what the passes before found.
+    pub images: Deformed,
+    /// Where its windows lie.
+    pub layout: Layout,
+    /// How far it seeks a peak (columns, rows), px.
+    pub reach: (usize, usize),
+    /// What it adds its shifts to; `None` where it is the only pass.
+    pub predictor: Option<Predictor>,
+}
+
+/// Runs every pass but the last over two exposures of one size.
+///
+/// # Errors
+/// As [`interrogate_images`].
+pub(super) fn before_last_pass(
+    first: &Array2<f32>,
+    second: &Array2<f32>,
+    mask: Option<&Array2<bool>>,
+    plan: &Plan,
+    label: &str,
+    task: &Task,
+) -> Result<LastView, InterrogateError> {
+    let (height, width) = first.dim();
     let layouts = layouts(plan, width, height, label)?;
     let mut splines: Option<[SplineImage; 2]> = None;
     let mut known: Option<(Shifts, Layout)> = None;
-    let mut last = None;
     for (pass, layout) in layouts.iter().enumerate() {
         task.check()?;
         let predictor = known
@@ -139,23 +176,19 @@ pub fn interrogate_images(
             _ => Exposures::plain([first, second], masks),
         };
         let reach = reach(layout.window, pass == 0);
-        let is_last = pass + 1 == layouts.len();
-        let findings = Pass::new(&images, layout, reach, is_last)?.run(task)?;
+        if pass + 1 == layouts.len() {
+            return Ok(LastView {
+                images,
+                layout: *layout,
+                reach,
+                predictor,
+            });
+        }
+        let findings = Pass::new(&images, layout, reach, false)?.run(task)?;
         let judged = judge(&findings, layout, predictor.as_ref(), mask, plan);
-        known = Some((judged.shifts.clone(), *layout));
-        last = Some((judged, *layout, findings));
+        known = Some((judged.shifts, *layout));
     }
-    match last {
-        Some((judged, layout, findings)) => Ok(finish(
-            (judged, findings),
-            plan.error_model(),
-            &layout,
-            height,
-            scale,
-            label,
-        )),
-        None => unreachable!("a plan has at least one pass"),
-    }
+    unreachable!("a plan has at least one pass")
 }
 
 fn layouts(

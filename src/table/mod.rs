@@ -9,6 +9,7 @@ mod cell;
 mod column;
 mod csv;
 mod eddies;
+mod peaks;
 mod show;
 #[allow(clippy::module_inception)]
 mod table;
@@ -16,4 +17,5 @@ mod table;
 pub use cell::Cell;
 pub use column::Column;
 pub use eddies::{eddies, eddies_of_each};
+pub use peaks::plane_peaks;
 pub use table::{Table, TableError};

@@ -209,6 +209,15 @@ fn words(room: &mut Room) {
             "",
         )
         .does(|figure: &Figure, words: String| figure.clone().title(&words));
+    room.method::<Figure>("caption")
+        .about("Words under the figure; long ones are broken into lines.")
+        .words("legend note text below")
+        .input("words", "", "the caption")
+        .example(
+            "figure().line([0, 1], [0, 1]).caption(\"Drawn from memory.\").save(\"line.svg\")",
+            "",
+        )
+        .does(|figure: &Figure, words: String| figure.clone().caption(&words));
     room.method::<Figure>("x_label")
         .about("Words along the x axis; the unit is added.")
         .words("axis name text")

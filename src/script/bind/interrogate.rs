@@ -65,6 +65,7 @@ impl Kind for Series {
     const HAS_ITEMS: bool = true;
 }
 
+/// A pair the examples look at.
 macro_rules! with_a_recording {
     ($code:literal) => {
         concat!(
@@ -156,6 +157,7 @@ pub(super) fn records(room: &mut Room) {
             },
         );
     of_series(room);
+    super::plane::records(room);
 }
 
 /// Below this share of measured vectors something is likely to be wrong with the settings. Common
@@ -176,7 +178,7 @@ fn note_poor_yield(fields: &[VectorField], recording: &str, call: &Call) {
     }
 }
 
-fn given(plan: Option<Arc<Plan>>) -> Result<Arc<Plan>, Fault> {
+pub(super) fn given(plan: Option<Arc<Plan>>) -> Result<Arc<Plan>, Fault> {
     match plan {
         Some(plan) => Ok(plan),
         None => Ok(Arc::new(Plan::new(&PlanOptions::default())?)),

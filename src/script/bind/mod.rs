@@ -12,6 +12,7 @@ mod interrogate;
 mod lists;
 mod mathematics;
 mod place;
+mod plane;
 mod quantity;
 mod synth;
 mod table;
