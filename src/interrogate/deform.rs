@@ -40,12 +40,13 @@ impl Deformed {
         }
     }
 
-    /// Reads the first exposure at x - d/2 and the second at x + d/2, d the predicted shift.
+    /// Reads the first exposure at x - d/2 and the second at x + d/2, d the predicted shift; dark
+    /// where either is read from a pixel that its mask hides.
     pub fn new(
         first: &SplineImage,
         second: &SplineImage,
         predictor: &Predictor,
-        mask: Option<&Array2<bool>>,
+        masks: [Option<&Array2<bool>>; 2],
         (height, width): (usize, usize),
     ) -> Self {
         let mut out = Self {
@@ -67,7 +68,7 @@ impl Deformed {
                 |(dx, dy, line), (row, ((a, b), lit))| {
                     predictor.row(row, dx, dy, line);
                     let dark = deform_row([first, second], row, [dx, dy], [a, b], lit);
-                    dark | mask.is_some_and(|m| hide(m, row, [dx, dy], lit))
+                    dark | hide(masks, row, [dx, dy], lit)
                 },
             )
             .reduce(|| false, |a, b| a | b);
@@ -78,20 +79,25 @@ impl Deformed {
     }
 }
 
-/// Darkens what either exposure shows of the mask; true when anything was.
-fn hide(mask: &Array2<bool>, row: usize, [dx, dy]: [&[f32]; 2], lit: &mut [f32]) -> bool {
-    let (height, width) = mask.dim();
+/// Darkens what each exposure shows of its mask; true when anything was.
+fn hide(
+    masks: [Option<&Array2<bool>>; 2],
+    row: usize,
+    [dx, dy]: [&[f32]; 2],
+    lit: &mut [f32],
+) -> bool {
     let mut any = false;
-    for (x, lit) in lit.iter_mut().enumerate() {
-        let hidden = [-0.5f32, 0.5].iter().any(|half| {
+    for (mask, half) in masks.into_iter().zip([-0.5f32, 0.5]) {
+        let Some(mask) = mask else { continue };
+        let (height, width) = mask.dim();
+        for (x, lit) in lit.iter_mut().enumerate() {
             let at = |p: usize, d: f32, n: usize| {
                 ((p as f32 + half * d).round().max(0.0) as usize).min(n - 1)
             };
-            mask[(at(row, dy[x], height), at(x, dx[x], width))]
-        });
-        if hidden {
-            *lit = 0.0;
-            any = true;
+            if mask[(at(row, dy[x], height), at(x, dx[x], width))] {
+                *lit = 0.0;
+                any = true;
+            }
         }
     }
     any

@@ -9,6 +9,7 @@
 //! Reading files, eddies and statistics live elsewhere.
 
 mod deform;
+mod hidden;
 mod layout;
 mod pass;
 mod peak;

@@ -5,6 +5,7 @@ use std::sync::Arc;
 use ndarray::{Array2, s};
 
 use super::deform::Deformed;
+use super::hidden::{evened, in_either};
 use super::layout::Layout;
 use super::pass::{Finding, Pass};
 use super::plan::{Plan, WindowSize};
@@ -63,17 +64,18 @@ pub enum InterrogateError {
     Cancelled(#[from] Cancelled),
 }
 
-/// Interrogates one pair: [`interrogate_images`] on its two exposures, in the units of its
-/// calibration.
+/// Interrogates one pair: [`interrogate_images`] on its two exposures and what its masks hide of
+/// each, in the units of its calibration.
 ///
 /// # Errors
 /// [`InterrogateError`] when a frame cannot be read, sizes do not fit, or `task` was cancelled.
 pub fn interrogate(pair: &Pair, plan: &Plan, task: &Task) -> Result<VectorField, InterrogateError> {
     let (first, second) = pair.load()?;
+    let hidden = pair.hidden(&first, &second)?;
     interrogate_images(
         &first.pixels,
         &second.pixels,
-        None,
+        [hidden[0].as_ref(), hidden[1].as_ref()],
         plan,
         &pair.scale(),
         pair.label(),
@@ -83,7 +85,7 @@ pub fn interrogate(pair: &Pair, plan: &Plan, task: &Task) -> Result<VectorField,
 
 /// Interrogates two exposures given as grey levels (row 0 at the top, equal shapes).
 ///
-/// Pixels where `mask` is true are used by no window. The result is on the grid of the plan's
+/// Pixels where `masks` is true, one mask for each exposure, are used by no window. The result is on the grid of the plan's
 /// last pass, y up, in mm and s when `scale` is a calibration and in px and frames otherwise.
 /// Each vector is the displacement of its window's pattern over the frame interval, at the mid
 /// time and at the window's centre, divided by the interval.
@@ -93,7 +95,7 @@ pub fn interrogate(pair: &Pair, plan: &Plan, task: &Task) -> Result<VectorField,
 pub fn interrogate_images(
     first: &Array2<f32>,
     second: &Array2<f32>,
-    mask: Option<&Array2<bool>>,
+    masks: [Option<&Array2<bool>>; 2],
     plan: &Plan,
     scale: &Scale,
     label: &str,
@@ -108,9 +110,7 @@ pub fn interrogate_images(
             second: size(second.dim()),
         });
     }
-    if let Some(mask) = mask
-        && mask.dim() != first.dim()
-    {
+    if let Some(mask) = masks.into_iter().flatten().find(|m| m.dim() != first.dim()) {
         return Err(InterrogateError::MaskSize {
             label: label.to_owned(),
             mask: size(mask.dim()),
@@ -118,6 +118,9 @@ pub fn interrogate_images(
         });
     }
     let layouts = layouts(plan, width, height, label)?;
+    let either = in_either(masks);
+    let mask = either.as_ref();
+    let (first, second) = (&*evened(first, masks[0]), &*evened(second, masks[1]));
     let mut splines: Option<[SplineImage; 2]> = None;
     let mut known: Option<(Shifts, Layout)> = None;
     let mut last = None;
@@ -138,7 +141,7 @@ pub fn interrogate_images(
                 let [a, b] = splines.insert([a, b]);
                 task.check()?;
                 let predictor = Predictor::new(&shifts.smoothed(on), on, width, height);
-                let images = Deformed::new(a, b, &predictor, mask, (height, width));
+                let images = Deformed::new(a, b, &predictor, masks, (height, width));
                 (Some(predictor), images)
             }
         };
