@@ -7,7 +7,7 @@
 //! | --- | --- |
 //! | [`quantity`] | units and measured values: what every number carries |
 //! | [`task`] | the handle through which long work reports progress and is cancelled |
-//! | [`frames`] | images in: reading, pairing, calibration |
+//! | [`frames`] | images in: reading, pairing, calibration, masks |
 //! | [`interrogate`] | image pairs to displacement: windows, transforms, peaks, deformation, validation |
 //! | [`series`] | the fields of a recording on disk: written, resumed, read back |
 //! | [`field`] | grid, vector and scalar fields, gradients, sampling |

@@ -280,6 +280,124 @@ const IMAGES: &[Case] = &[
     ),
 ];
 
+const MASKS: &[Case] = &[
+    (
+        "mask_polygon([[0, 0], [9, 9]]);",
+        &[],
+        1,
+        "a polygon has 3 to 10000 corners, not 2",
+    ),
+    (
+        "mask_polygon([[0, 0], [9, 9], [18, 18]]);",
+        &[],
+        1,
+        "the polygon has no area: its corners lie on one line",
+    ),
+    (
+        "mask_polygon([[0, 0], [9, 9], [9, 0], [0, 9]]);",
+        &[],
+        1,
+        "the sides of the polygon from corner 0 to 1 and from corner 2 to 3 cross: give the corners in their order round it",
+    ),
+    (
+        "mask_polygon([[0, 0], [9], [9, 0]]);",
+        &[],
+        1,
+        "`corners` takes a list of points [x, y] of numbers; item 1 should be a point [x, y] of numbers",
+    ),
+    (
+        "mask_polygon([[0, 0], [1e300, 9], [9, 0]]);",
+        &[],
+        1,
+        "its coordinates must be finite numbers, at most 1000000000",
+    ),
+    (
+        "mask_circle(20, 20, 0);",
+        &[],
+        1,
+        "the radius of the circle is 0: it must be above 0",
+    ),
+    (
+        "mask_circle(20, 20, 5, \"cm\");",
+        &[],
+        1,
+        "the unit of a mask is \"px\" or \"mm\", not \"cm\"",
+    ),
+    (
+        "mask_rectangle([5, 5], [5, 9]);",
+        &[],
+        1,
+        "the rectangle from (5, 5) to (5, 9) has no area: give two opposite corners",
+    ),
+    (
+        "mask_bright(#{ grow_px: 2 });",
+        &[],
+        1,
+        "option `above` is missing",
+    ),
+    (
+        "mask_bright(#{ above: -1 });",
+        &[],
+        1,
+        "above is -1: it must be 0 to 65535",
+    ),
+    (
+        "mask_bright(#{ above: 3000, grow_px: 101 });",
+        &[],
+        1,
+        "grow_px is 101: it must be 0 to 100",
+    ),
+    (
+        "mask_bright(#{ above: 3000, least_area_px2: -4 });",
+        &[],
+        1,
+        "least_area_px2 is -4: it must be 0 to 1000000000",
+    ),
+    (
+        "mask_bright(#{ above: 3000, grow: 4 });",
+        &[],
+        1,
+        "there is no option `grow`",
+    ),
+    ("mask_image(\"missing.png\");", &[], 1, "there is no file "),
+    (
+        "mask_image(\"../secret.csv\");",
+        &[],
+        1,
+        "a script may not read ../secret.csv",
+    ),
+    (
+        "mask_image(\"img/pages_16.tif\");",
+        &[],
+        1,
+        "kolk reads a mask from a file of one image",
+    ),
+    (
+        "pair.hide(mask_image(\"img/strips_8.tif\"));",
+        &[],
+        1,
+        "strips_8.tif is 40 x 24 px but the exposures are 64 x 64 px: a mask image must be of their size",
+    ),
+    (
+        "recording([pair]).hide(mask_circle(3, 3, 1, \"mm\"));",
+        &[],
+        1,
+        "a mask in mm needs a recording with dt_s and mm_per_px: give the mask in px",
+    ),
+    (
+        "pair.hide(\"mask.png\");",
+        &[],
+        1,
+        "`mask` takes a mask, not text",
+    ),
+    (
+        "let m = mask_circle(3, 3, 1); for k in 0..10 { m = m + m; }",
+        &[],
+        1,
+        "the masks have 1024 parts together; one mask has at most 1000",
+    ),
+];
+
 const FOLDERS_AND_TABLES: &[Case] = &[
     (
         "recording(\"/etc/passwd\");",
@@ -652,6 +770,11 @@ fn options_that_make_no_sense_are_named() {
 #[test]
 fn images_that_cannot_be_used_are_named_with_the_reason() {
     check_all(IMAGES);
+}
+
+#[test]
+fn masks_that_make_no_sense_are_refused_with_the_reason() {
+    check_all(MASKS);
 }
 
 #[test]

@@ -396,7 +396,7 @@ fn windows_behind_a_mask_are_masked_and_those_over_the_edge_are_outside() {
     let field = kolk::interrogate::interrogate_images(
         &first.pixels,
         &second.pixels,
-        Some(&mask),
+        [Some(&mask); 2],
         &plan,
         &Scale::default(),
         "masked",

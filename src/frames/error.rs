@@ -102,6 +102,21 @@ pub enum FrameError {
     /// A pair index past the end.
     #[error("there is no pair {index}: the recording has {pairs}, counted from 0")]
     NoPair { index: usize, pairs: usize },
+    /// A mask that makes no sense.
+    #[error("{0}")]
+    Mask(String),
+    /// A mask image that is no image of an exposure.
+    #[error(
+        "{mask} is {mw} x {mh} px but the exposures are {w} x {h} px: a mask image must be of their size",
+        mw = mask_size.0, mh = mask_size.1, w = size.0, h = size.1
+    )]
+    MaskSize {
+        mask: String,
+        /// (width, height) in px.
+        mask_size: (usize, usize),
+        /// (width, height) of an exposure in px.
+        size: (usize, usize),
+    },
     /// A calibration that makes no sense.
     #[error("{0}")]
     Calibration(String),

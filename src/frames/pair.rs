@@ -3,11 +3,11 @@
 use std::path::Path;
 use std::sync::Arc;
 
-use ndarray::s;
+use ndarray::{Array2, s};
 
 use super::error::page_name;
 use super::read::{Page, read_position};
-use super::{Frame, FrameError, Scale};
+use super::{Frame, FrameError, Mask, Scale};
 
 /// Two exposures of one flow; cheap to clone. Exposures from files load at each [`Pair::load`].
 #[derive(Clone, Debug)]
@@ -16,6 +16,8 @@ pub struct Pair {
     scale: Scale,
     label: Arc<str>,
     pub(super) index: usize,
+    /// What hides pixels of the first and of the second exposure, together.
+    masks: [Vec<Mask>; 2],
 }
 
 #[derive(Clone, Debug)]
@@ -68,6 +70,7 @@ impl Pair {
             scale,
             label: label.into(),
             index: 0,
+            masks: Default::default(),
         }
     }
 
@@ -84,6 +87,7 @@ impl Pair {
             scale,
             label: label.into(),
             index,
+            masks: Default::default(),
         }
     }
 
@@ -93,6 +97,7 @@ impl Pair {
             scale,
             label: source.short_name().into(),
             index,
+            masks: Default::default(),
         }
     }
 
@@ -133,6 +138,70 @@ impl Pair {
             exposures: Exposures::InMemory(first, second),
             ..self.clone()
         })
+    }
+
+    /// The same pair with the pixels of `mask` hidden in both exposures, beside what is hidden
+    /// already.
+    ///
+    /// # Errors
+    /// [`FrameError`] where a mask image is not of the exposures' size, or the mask is in mm and
+    /// the pair has no calibration.
+    pub fn hide(&self, mask: &Mask) -> Result<Pair, FrameError> {
+        self.hide_each(mask, mask)
+    }
+
+    /// The same pair with the pixels of `in_first` hidden in the first exposure and those of
+    /// `in_second` in the second, as a body needs that moves in between.
+    ///
+    /// # Errors
+    /// As [`Pair::hide`].
+    pub fn hide_each(&self, in_first: &Mask, in_second: &Mask) -> Result<Pair, FrameError> {
+        let mut pair = self.clone();
+        for (masks, mask) in pair.masks.iter_mut().zip([in_first, in_second]) {
+            mask.check(self.size(), &self.scale)?;
+            masks.push(mask.clone());
+        }
+        Ok(pair)
+    }
+
+    /// What hides pixels of the first and of the second exposure; several masks add up.
+    pub fn masks(&self) -> [&[Mask]; 2] {
+        [&self.masks[0], &self.masks[1]]
+    }
+
+    /// Which pixels of its two exposures, as [`Pair::load`] gives them, are hidden: shape (rows,
+    /// columns), row 0 at the top, true = hidden; `None` for an exposure of which no pixel is.
+    ///
+    /// # Errors
+    /// As [`Pair::hide`].
+    pub fn hidden(
+        &self,
+        first: &Frame,
+        second: &Frame,
+    ) -> Result<[Option<Array2<bool>>; 2], FrameError> {
+        let of = |masks: &[Mask], frame: &Frame| {
+            let mut hidden = Array2::from_elem(frame.pixels.dim(), false);
+            for mask in masks {
+                mask.cover(frame, &self.scale, &mut hidden)?;
+            }
+            Ok(hidden.iter().any(|hidden| *hidden).then_some(hidden))
+        };
+        Ok([of(&self.masks[0], first)?, of(&self.masks[1], second)?])
+    }
+
+    /// The share of the pixels, 0 to 1, that are hidden in one exposure or the other. Loads them.
+    ///
+    /// # Errors
+    /// As [`Pair::load`] and [`Pair::hide`].
+    pub fn hidden_share(&self) -> Result<f64, FrameError> {
+        let (first, second) = self.load()?;
+        let hidden = match self.hidden(&first, &second)? {
+            [Some(first), Some(second)] => first | second,
+            [None, None] => return Ok(0.0),
+            [Some(one), None] | [None, Some(one)] => one,
+        };
+        let count = hidden.iter().filter(|hidden| **hidden).count();
+        Ok(count as f64 / hidden.len() as f64)
     }
 
     /// Files and positions of the pages its exposures stand in; none for a pair in memory.

@@ -9,7 +9,7 @@ use serde::{Deserialize, Serialize};
 use super::names::matching_files;
 use super::pair::Source;
 use super::read::headers;
-use super::{FrameError, Pair, Scale};
+use super::{FrameError, Mask, Pair, Scale};
 
 /// How successive frames make pairs. Each page of a file of several pages is a frame.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Hash, Serialize, Deserialize)]
@@ -191,6 +191,19 @@ impl Recording {
         self.pairs.get(index).cloned().ok_or(FrameError::NoPair {
             index,
             pairs: self.len(),
+        })
+    }
+
+    /// The same recording with the pixels of `mask` hidden in every exposure, beside what is
+    /// hidden already.
+    ///
+    /// # Errors
+    /// As [`Pair::hide`].
+    pub fn hide(&self, mask: &Mask) -> Result<Recording, FrameError> {
+        let pairs = self.pairs.iter().map(|pair| pair.hide(mask));
+        Ok(Recording {
+            pairs: pairs.collect::<Result<_, _>>()?,
+            ..self.clone()
         })
     }
 

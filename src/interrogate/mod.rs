@@ -10,6 +10,9 @@
 //! Reading files, eddies and statistics live elsewhere.
 
 mod deform;
+mod finish;
+mod hidden;
+mod judge;
 mod layout;
 mod pass;
 mod peak;
@@ -24,7 +27,8 @@ mod statistics;
 mod taper;
 mod validate;
 
+pub use finish::blank_field;
 pub use kolk_correlate as transform;
 pub use plan::{Plan, PlanError, PlanOptions, WindowSize};
 pub use plane::{CorrelationPlane, PlaneError, PlanePeak, correlation_plane};
-pub use run::{ALGORITHM, InterrogateError, blank_field, interrogate, interrogate_images};
+pub use run::{ALGORITHM, InterrogateError, interrogate, interrogate_images};

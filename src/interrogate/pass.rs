@@ -42,7 +42,6 @@ impl Finding {
 
 /// One pass over a pair.
 pub(crate) struct Pass<'a> {
-    images: &'a Exposures<'a>,
     layout: &'a Layout,
     /// Columns, rows.
     tapers: [Taper; 2],
@@ -58,7 +57,6 @@ impl<'a> Pass<'a> {
     /// A pass over `layout`, peaks sought up to `reach` (columns, rows) px away, with the
     /// uncertainty of each vector if `statistics` is true.
     pub fn new(
-        images: &'a Exposures<'a>,
         layout: &'a Layout,
         reach: (usize, usize),
         statistics: bool,
@@ -72,7 +70,6 @@ impl<'a> Pass<'a> {
             .flat_map(|wy| across.weights.iter().map(move |wx| wx * wy))
             .collect();
         Ok(Self {
-            images,
             layout,
             correlator: Correlator::new(height, width)?.weighted(weights.clone())?,
             tapers,
@@ -87,7 +84,7 @@ impl<'a> Pass<'a> {
     }
 
     /// Correlates every window; stretches of rows share the cores.
-    pub fn run(&self, task: &Task) -> Result<Array2<Finding>, Cancelled> {
+    pub fn run(&self, images: &Exposures, task: &Task) -> Result<Array2<Finding>, Cancelled> {
         let (rows, columns) = self.layout.shape();
         let mut out = vec![Finding::NOTHING; rows * columns];
         // Each stretch makes the rows under its first windows anew, so it should be long; none of
@@ -100,11 +97,11 @@ impl<'a> Pass<'a> {
         out.par_chunks_mut(columns * stretch)
             .enumerate()
             .map_init(
-                || Bench::new(self),
+                || Bench::new(self, images.width),
                 |bench, (number, chunk)| {
                     for (k, row) in chunk.chunks_mut(columns).enumerate() {
                         task.check()?;
-                        bench.advance(self, number * stretch + k, k == 0);
+                        bench.advance(self, images, number * stretch + k, k == 0);
                         self.row(bench, row);
                     }
                     Ok(())
@@ -233,7 +230,7 @@ struct Statistics {
 }
 
 impl Bench {
-    fn new(pass: &Pass) -> Self {
+    fn new(pass: &Pass, width: usize) -> Self {
         let layout = pass.layout;
         let columns = WindowColumns {
             left: layout.left,
@@ -259,7 +256,7 @@ impl Bench {
             all_lit: true,
             dark: vec![vec![false; columns.batches()]; layout.window.height].into(),
             columns,
-            row: Row::new(pass.images.width),
+            row: Row::new(width),
             planes: pass.correlator.planes(),
             scratch: pass.correlator.scratch(),
             statistics: Statistics {
@@ -272,7 +269,7 @@ impl Bench {
 
     /// Brings the pixels of row `j` of windows into the bands; all of them when `fresh`, else
     /// those that the row of windows above did not have.
-    fn advance(&mut self, pass: &Pass, j: usize, fresh: bool) {
+    fn advance(&mut self, pass: &Pass, images: &Exposures, j: usize, fresh: bool) {
         let (top, _) = pass.layout.corner(j, 0);
         let height = pass.layout.window.height;
         let new = if fresh {
@@ -290,11 +287,11 @@ impl Bench {
         let rows = rows.zip(self.lit.rows_mut()).zip(&mut self.dark);
         for (r, (((mut first, mut second), mut lit), dark)) in rows.enumerate().skip(height - new) {
             dark.fill(false);
-            if pass.images.row(top + r, &mut self.row) {
+            if images.row(top + r, &mut self.row) {
                 for (batch, dark) in dark.iter_mut().enumerate() {
                     let left = self.columns.left + batch * LANES * self.columns.spacing;
                     let end = left + (LANES - 1) * self.columns.spacing + self.columns.width;
-                    let end = end.min(pass.images.width);
+                    let end = end.min(images.width);
                     *dark = self.row.lit[left..end].contains(&0.0);
                     self.all_lit &= !*dark;
                 }

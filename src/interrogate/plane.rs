@@ -2,12 +2,11 @@
 
 use ndarray::Array2;
 
-use super::deform::Deformed;
 use super::layout::Layout;
 use super::peak::Peak;
 use super::plan::{Plan, WindowSize};
 use super::raw_plane::RawPlane;
-use super::run::{InterrogateError, before_last_pass};
+use super::run::{Images, InterrogateError, before_last_pass};
 use crate::field::{Grid, ScalarField};
 use crate::frames::{Pair, Scale};
 use crate::quantity::{Unit, plain_number};
@@ -162,14 +161,22 @@ pub fn correlation_plane(
     let (first, second) = pair.load().map_err(InterrogateError::from)?;
     let (height, scale) = (first.height(), pair.scale());
     let (column, row) = place(at, (first.width(), height), &scale, pair.label())?;
-    let (first, second) = (&first.pixels, &second.pixels);
-    let view = before_last_pass(first, second, None, plan, pair.label(), task)?;
+    let hidden = pair
+        .hidden(&first, &second)
+        .map_err(InterrogateError::from)?;
+    let masks = [hidden[0].as_ref(), hidden[1].as_ref()];
+    let mut images = Images::new([&first.pixels, &second.pixels], masks, pair.label())?;
+    let view = before_last_pass(&mut images, plan, pair.label(), task)?;
     let window = nearest(&view.layout, column, row);
-    let raw = RawPlane::of(&view, window).map_err(InterrogateError::from)?;
+    let exposures = images.exposures(view.predictor.as_ref());
+    let raw = RawPlane::of(&view, &exposures, window).map_err(InterrogateError::from)?;
     let (column, row) = centre(&view.layout, window);
     let ((length, mm), (time, dt)) = (scale.length(), scale.time());
     let shift = Shift {
-        predicted: view.predictor.map_or((0.0, 0.0), |p| p.at(column, row)),
+        predicted: view
+            .predictor
+            .as_ref()
+            .map_or((0.0, 0.0), |p| p.at(column, row)),
         px: mm / dt,
     };
     Ok(CorrelationPlane {
@@ -179,11 +186,7 @@ pub fn correlation_plane(
         window: view.layout.window,
         predicted: shift.of((0.0, 0.0)),
         reach_px: view.reach,
-        lit: lit_share(
-            &view.images,
-            view.layout.corner(window.0, window.1),
-            view.layout.window,
-        ),
+        lit: raw.lit,
         label: pair.label().to_owned(),
         vector: Some(shift.peak(&raw, raw.highest)).filter(|peak| peak.height > 0.0),
         peaks: shift.peaks(&raw),
@@ -234,15 +237,6 @@ fn centre(layout: &Layout, (j, i): (usize, usize)) -> (f64, f64) {
         layout.first_x() + (i * layout.step_x) as f64,
         layout.first_y() + (j * layout.step_y) as f64,
     )
-}
-
-/// Share of the window with this top-left corner that could be read in both exposures.
-fn lit_share(images: &Deformed, (top, left): (usize, usize), window: WindowSize) -> f64 {
-    let Some(lit) = &images.lit else { return 1.0 };
-    let rows = (top..top + window.height).map(|row| &lit[row * images.width + left..]);
-    let pixels = rows.flat_map(|row| &row[..window.width]);
-    let read = pixels.filter(|pixel| **pixel > 0.0).count();
-    read as f64 / (window.width * window.height) as f64
 }
 
 /// From offsets in a plane to displacement.

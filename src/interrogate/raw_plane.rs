@@ -2,9 +2,10 @@
 
 use ndarray::Array2;
 
+use super::deform::{Exposures, Row};
 use super::peak::Patch;
 use super::plan::WindowSize;
-use super::run::LastView;
+use super::run::Stage;
 use super::taper::Taper;
 use super::transform::{
     Correlator, LANES, Layout as PixelLayout, Search, TransformError, Windows, gather,
@@ -19,6 +20,8 @@ pub(super) struct RawPlane {
     samples: Array2<f32>,
     /// Factor that makes them coefficients; 0 without contrast.
     norm: f32,
+    /// Share of the window that could be read in both exposures.
+    pub lit: f64,
     /// Column and row of the highest sample within the reach of the pass, as offsets.
     pub highest: (i32, i32),
     /// Columns, rows.
@@ -27,7 +30,11 @@ pub(super) struct RawPlane {
 
 impl RawPlane {
     /// Correlates the window in row `j`, column `i` as the pass does, but with the whole plane.
-    pub fn of(view: &LastView, (j, i): (usize, usize)) -> Result<RawPlane, TransformError> {
+    pub fn of(
+        view: &Stage,
+        images: &Exposures,
+        (j, i): (usize, usize),
+    ) -> Result<RawPlane, TransformError> {
         let WindowSize { width, height } = view.layout.window;
         let tapers = [Taper::new(width), Taper::new(height)];
         let [across, down] = &tapers;
@@ -35,14 +42,25 @@ impl RawPlane {
         let rows = down.weights.iter();
         let weights = rows.flat_map(|wy| across.iter().map(move |wx| wx * wy));
         let correlator = Correlator::new(height, width)?.weighted(weights.collect())?;
-        let (images, corner) = (&view.images, view.layout.corner(j, i));
+        let (top, left) = view.layout.corner(j, i);
+        let pixels = || Vec::with_capacity(height * width);
+        let (mut first, mut second, mut lit) = (pixels(), pixels(), pixels());
+        let mut row = Row::new(images.width);
+        let mut dark = false;
+        for r in top..top + height {
+            dark |= images.row(r, &mut row);
+            first.extend_from_slice(&row.first[left..left + width]);
+            second.extend_from_slice(&row.second[left..left + width]);
+            lit.extend_from_slice(&row.lit[left..left + width]);
+        }
+        let share = lit.iter().sum::<f32>() / (height * width) as f32;
         let gathered = |pixels: &[f32]| {
             let mut out = vec![0.0; height * width * LANES];
-            gather(pixels, images.width, &[corner], (height, width), &mut out);
+            gather(pixels, width, &[(0, 0)], (height, width), &mut out);
             out
         };
-        let (first, second) = (gathered(&images.first), gathered(&images.second));
-        let lit = images.lit.as_deref().map(gathered);
+        let (first, second) = (gathered(&first), gathered(&second));
+        let lit = dark.then(|| gathered(&lit));
         let windows = Windows {
             first: &first,
             second: &second,
@@ -63,6 +81,7 @@ impl RawPlane {
                 planes[(m * width + n) * LANES]
             }),
             norm: moments.normalization(0),
+            lit: f64::from(share),
             highest: (highest.column, highest.row),
             tapers,
         })
@@ -132,6 +151,7 @@ impl RawPlane {
         RawPlane {
             samples,
             norm: 1.0,
+            lit: 1.0,
             highest: (0, 0),
             tapers: [Taper::new(width), Taper::new(height)],
         }

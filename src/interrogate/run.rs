@@ -1,19 +1,19 @@
 //! From a pair to its vector field.
 
-use std::sync::Arc;
+use std::borrow::Cow;
 
-use ndarray::{Array2, s};
+use ndarray::Array2;
 
-use super::deform::Exposures;
+use super::deform::{Exposures, Masks};
+use super::finish::finish;
+use super::hidden::{evened, in_either};
+use super::judge::judge;
 use super::layout::Layout;
 use super::pass::{Finding, Pass};
 use super::plan::{Plan, WindowSize};
 use super::predictor::{Predictor, Shifts};
-use super::response::ErrorModel;
 use super::spline::SplineImage;
-use super::statistics::pooled;
-use super::validate::{MedianTest, fill};
-use crate::field::{Grid, Status, VectorField};
+use crate::field::VectorField;
 use crate::frames::{FrameError, Pair, Scale};
 use crate::task::{Cancelled, Task};
 
@@ -63,17 +63,18 @@ pub enum InterrogateError {
     Cancelled(#[from] Cancelled),
 }
 
-/// Interrogates one pair: [`interrogate_images`] on its two exposures, in the units of its
-/// calibration.
+/// Interrogates one pair: [`interrogate_images`] on its two exposures and what its masks hide of
+/// each, in the units of its calibration.
 ///
 /// # Errors
 /// [`InterrogateError`] when a frame cannot be read, sizes do not fit, or `task` was cancelled.
 pub fn interrogate(pair: &Pair, plan: &Plan, task: &Task) -> Result<VectorField, InterrogateError> {
     let (first, second) = pair.load()?;
+    let hidden = pair.hidden(&first, &second)?;
     interrogate_images(
         &first.pixels,
         &second.pixels,
-        None,
+        [hidden[0].as_ref(), hidden[1].as_ref()],
         plan,
         &pair.scale(),
         pair.label(),
@@ -83,115 +84,181 @@ pub fn interrogate(pair: &Pair, plan: &Plan, task: &Task) -> Result<VectorField,
 
 /// Interrogates two exposures given as grey levels (row 0 at the top, equal shapes).
 ///
-/// Pixels where `mask` is true are used by no window. The result is on the grid of the plan's
-/// last pass, y up, in mm and s when `scale` is a calibration and in px and frames otherwise.
-/// Each vector is the displacement of its window's pattern over the frame interval, at the mid
-/// time and at the window's centre, divided by the interval.
+/// Pixels where `masks` is true, one mask for each exposure, are used by no window. The result is
+/// on the grid of the plan's last pass, y up, in mm and s when `scale` is a calibration and in px
+/// and frames otherwise. Each vector is the displacement of its window's pattern over the frame
+/// interval, at the mid time and at the window's centre, divided by the interval.
 ///
 /// # Errors
 /// [`InterrogateError`] when sizes do not fit, or when `task` was cancelled.
 pub fn interrogate_images(
     first: &Array2<f32>,
     second: &Array2<f32>,
-    mask: Option<&Array2<bool>>,
+    masks: Masks,
     plan: &Plan,
     scale: &Scale,
     label: &str,
     task: &Task,
 ) -> Result<VectorField, InterrogateError> {
-    let height = first.nrows();
-    let size = |(h, w): (usize, usize)| format!("{w} x {h}");
-    if second.dim() != first.dim() {
-        return Err(InterrogateError::SizesDiffer {
-            label: label.to_owned(),
-            first: size(first.dim()),
-            second: size(second.dim()),
-        });
-    }
-    if let Some(mask) = mask
-        && mask.dim() != first.dim()
-    {
-        return Err(InterrogateError::MaskSize {
-            label: label.to_owned(),
-            mask: size(mask.dim()),
-            image: size(first.dim()),
-        });
-    }
-    let view = before_last_pass(first, second, mask, plan, label, task)?;
-    let findings = Pass::new(&view.images, &view.layout, view.reach, true)?.run(task)?;
-    let judged = judge(&findings, &view.layout, view.predictor.as_ref(), mask, plan);
+    let mut images = Images::new([first, second], masks, label)?;
+    let stage = before_last_pass(&mut images, plan, label, task)?;
+    let exposures = images.exposures(stage.predictor.as_ref());
+    let findings = Pass::new(&stage.layout, stage.reach, true)?.run(&exposures, task)?;
+    let hidden = in_either(masks);
+    let judged = judge(&findings, &stage, hidden.as_ref(), plan);
     Ok(finish(
         (judged, findings),
         plan.error_model(),
-        &view.layout,
-        height,
+        &stage.layout,
+        first.nrows(),
         scale,
         label,
     ))
 }
 
-/// What the last pass of a plan has before it.
-pub(super) struct LastView {
-    /// Both exposures, moved to the mid time by what the passes before found.
-    pub images: Deformed,
-    /// Where its windows lie.
-    pub layout: Layout,
-    /// How far it seeks a peak (columns, rows), px.
-    pub reach: (usize, usize),
-    /// What it adds its shifts to; `None` where it is the only pass.
-    pub predictor: Option<Predictor>,
-}
-
-/// Runs every pass but the last over two exposures of one size.
+/// Runs every pass but the last over one pair, and gives what the last has before it.
 ///
 /// # Errors
 /// As [`interrogate_images`].
 pub(super) fn before_last_pass(
-    first: &Array2<f32>,
-    second: &Array2<f32>,
-    mask: Option<&Array2<bool>>,
+    images: &mut Images,
     plan: &Plan,
     label: &str,
     task: &Task,
-) -> Result<LastView, InterrogateError> {
-    let (height, width) = first.dim();
+) -> Result<Stage, InterrogateError> {
+    let hidden = in_either(images.masks);
+    stages(
+        plan,
+        images.size(),
+        label,
+        hidden.as_ref(),
+        |stage, last| {
+            task.check()?;
+            if stage.predictor.is_some() {
+                images.prepare(task)?;
+            }
+            if last {
+                return Ok(None);
+            }
+            let exposures = images.exposures(stage.predictor.as_ref());
+            let findings = Pass::new(&stage.layout, stage.reach, false)?.run(&exposures, task)?;
+            Ok(Some(findings))
+        },
+    )
+}
+
+/// What a pass has before it, but for the images.
+pub(super) struct Stage {
+    /// Where its windows lie.
+    pub layout: Layout,
+    /// How far it seeks a peak (columns, rows), px.
+    pub reach: (usize, usize),
+    /// What it adds its shifts to; `None` in the first pass.
+    pub predictor: Option<Predictor>,
+}
+
+/// Goes through the passes of a plan for images of (width, height) px: `correlate` gives what the
+/// windows of a stage say, or nothing where it goes no further, which ends the passes at this
+/// stage. It is told whether the stage is the last.
+pub(super) fn stages(
+    plan: &Plan,
+    (width, height): (usize, usize),
+    label: &str,
+    hidden: Option<&Array2<bool>>,
+    mut correlate: impl FnMut(&Stage, bool) -> Result<Option<Array2<Finding>>, InterrogateError>,
+) -> Result<Stage, InterrogateError> {
     let layouts = layouts(plan, width, height, label)?;
-    let mut splines: Option<[SplineImage; 2]> = None;
     let mut known: Option<(Shifts, Layout)> = None;
     for (pass, layout) in layouts.iter().enumerate() {
-        task.check()?;
         let predictor = known
             .as_ref()
             .map(|(shifts, on)| Predictor::new(&shifts.smoothed(on), on, width, height));
-        if predictor.is_some() && splines.is_none() {
-            // Each takes a while on a large image.
-            let a = SplineImage::new(first);
-            task.check()?;
-            splines = Some([a, SplineImage::new(second)]);
-            task.check()?;
-        }
-        let masks = [mask, mask];
-        let images = match (&predictor, &splines) {
-            (Some(predictor), Some([a, b])) => Exposures::moved([a, b], predictor, masks),
-            _ => Exposures::plain([first, second], masks),
+        let stage = Stage {
+            layout: *layout,
+            reach: reach(layout.window, pass == 0),
+            predictor,
         };
-        let reach = reach(layout.window, pass == 0);
-        if pass + 1 == layouts.len() {
-            return Ok(LastView {
-                images,
-                layout: *layout,
-                reach,
-                predictor,
-            });
+        match correlate(&stage, pass + 1 == layouts.len())? {
+            Some(findings) => {
+                let judged = judge(&findings, &stage, hidden, plan);
+                known = Some((judged.shifts, *layout));
+            }
+            None => return Ok(stage),
         }
-        let findings = Pass::new(&images, layout, reach, false)?.run(task)?;
-        let judged = judge(&findings, layout, predictor.as_ref(), mask, plan);
-        known = Some((judged.shifts, *layout));
     }
-    unreachable!("a plan has at least one pass")
+    unreachable!("the passes end at the last stage at the latest")
 }
 
-fn layouts(
+/// The two exposures of a pair, what is hidden of them, and once they are needed the splines
+/// through them.
+pub(super) struct Images<'a> {
+    plain: [Cow<'a, Array2<f32>>; 2],
+    /// Hidden pixels of each.
+    pub masks: Masks<'a>,
+    splines: Option<[SplineImage; 2]>,
+}
+
+impl<'a> Images<'a> {
+    /// # Errors
+    /// [`InterrogateError`] when the exposures or the masks differ in size.
+    pub fn new(
+        images: [&'a Array2<f32>; 2],
+        masks: Masks<'a>,
+        label: &str,
+    ) -> Result<Self, InterrogateError> {
+        let size = |(h, w): (usize, usize)| format!("{w} x {h}");
+        let [first, second] = images;
+        if second.dim() != first.dim() {
+            return Err(InterrogateError::SizesDiffer {
+                label: label.to_owned(),
+                first: size(first.dim()),
+                second: size(second.dim()),
+            });
+        }
+        if let Some(mask) = masks.into_iter().flatten().find(|m| m.dim() != first.dim()) {
+            return Err(InterrogateError::MaskSize {
+                label: label.to_owned(),
+                mask: size(mask.dim()),
+                image: size(first.dim()),
+            });
+        }
+        Ok(Self {
+            plain: [evened(first, masks[0]), evened(second, masks[1])],
+            masks,
+            splines: None,
+        })
+    }
+
+    /// Width and height, px.
+    pub fn size(&self) -> (usize, usize) {
+        (self.plain[0].ncols(), self.plain[0].nrows())
+    }
+
+    /// Makes the splines unless they are there.
+    ///
+    /// # Errors
+    /// [`Cancelled`]: each takes a while on a large image.
+    pub fn prepare(&mut self, task: &Task) -> Result<(), Cancelled> {
+        if self.splines.is_none() {
+            let first = SplineImage::new(&self.plain[0]);
+            task.check()?;
+            self.splines = Some([first, SplineImage::new(&self.plain[1])]);
+            task.check()?;
+        }
+        Ok(())
+    }
+
+    /// The exposures moved by the predicted shift, or as they are; prepared if there is one.
+    pub fn exposures<'b>(&'b self, predictor: Option<&'b Predictor>) -> Exposures<'b> {
+        match (predictor, &self.splines) {
+            (Some(predictor), Some([a, b])) => Exposures::moved([a, b], predictor, self.masks),
+            _ => Exposures::plain([&self.plain[0], &self.plain[1]], self.masks),
+        }
+    }
+}
+
+/// The layouts of all passes.
+pub(super) fn layouts(
     plan: &Plan,
     width: usize,
     height: usize,
@@ -224,192 +291,4 @@ fn reach(window: WindowSize, first: bool) -> (usize, usize) {
         }
     };
     (along(window.width), along(window.height))
-}
-
-/// The vectors of one pass after validation.
-struct Judged {
-    shifts: Shifts,
-    status: Array2<Status>,
-}
-
-/// Adds residuals to the predictor, rejects what stands out, and fills the gaps.
-fn judge(
-    findings: &Array2<Finding>,
-    layout: &Layout,
-    predictor: Option<&Predictor>,
-    mask: Option<&Array2<bool>>,
-    plan: &Plan,
-) -> Judged {
-    let options = plan.options();
-    let mut predicted = Shifts::zero(layout.shape());
-    if let Some(predictor) = predictor {
-        for j in 0..layout.rows {
-            for i in 0..layout.columns {
-                let x = layout.first_x() + (i * layout.step_x) as f64;
-                let y = layout.first_y() + (j * layout.step_y) as f64;
-                (predicted.x[(j, i)], predicted.y[(j, i)]) = predictor.at(x, y);
-            }
-        }
-    }
-    let mut shifts = predicted;
-    for (at, finding) in findings.indexed_iter() {
-        shifts.x[at] += finding.shift.0;
-        shifts.y[at] += finding.shift.1;
-    }
-    let lit = findings.map(|f| f64::from(f.lit) >= options.least_lit);
-    let signal = findings.map(|f| f64::from(f.lit) >= options.least_lit && f.height > 0.0);
-    let test = MedianTest {
-        limit: options.median_limit,
-        floor_px: options.median_floor_px,
-    };
-    let mut good = signal.clone();
-    // The second round judges among what the first one left.
-    for _ in 0..2 {
-        let before = good.clone();
-        for (at, candidate) in signal.indexed_iter() {
-            if *candidate {
-                let d = (shifts.x[at], shifts.y[at]);
-                good[at] = test.fits(&shifts, &before, at, d);
-            }
-        }
-    }
-    fill(&mut shifts, &good);
-    let status = Array2::from_shape_fn(layout.shape(), |at| {
-        if good[at] {
-            Status::Measured
-        } else if !lit[at] {
-            if behind_mask(layout, at, findings[at].lit, mask) {
-                Status::Masked
-            } else {
-                Status::Outside
-            }
-        } else {
-            Status::Replaced
-        }
-    });
-    Judged { shifts, status }
-}
-
-/// True when a window of which the share `lit` is left lost more of it to the mask than to the
-/// edge of the image.
-fn behind_mask(
-    layout: &Layout,
-    (j, i): (usize, usize),
-    lit: f32,
-    mask: Option<&Array2<bool>>,
-) -> bool {
-    let Some(mask) = mask else { return false };
-    let (top, left) = layout.corner(j, i);
-    let (height, width) = (layout.window.height, layout.window.width);
-    let hidden = mask
-        .slice(s![top..top + height, left..left + width])
-        .iter()
-        .filter(|hidden| **hidden)
-        .count();
-    2.0 * hidden as f32 >= (1.0 - lit) * (width * height) as f32
-}
-
-/// Turns the last pass into a field with y up and the units of the calibration.
-fn finish(
-    (judged, findings): (Judged, Array2<Finding>),
-    model: &ErrorModel,
-    layout: &Layout,
-    height: usize,
-    scale: &Scale,
-    label: &str,
-) -> VectorField {
-    let (_, mm) = scale.length();
-    let (_, dt) = scale.time();
-    let blank = blank(layout, model, height, scale, label);
-    let grid = blank.grid;
-    let flip = |(j, i): (usize, usize)| (layout.rows - 1 - j, i);
-    let status = Array2::from_shape_fn(grid.shape(), |at| judged.status[flip(at)]);
-    let take = |values: &Array2<f64>, factor: f64| {
-        Array2::from_shape_fn(grid.shape(), |at| {
-            if status[at].has_vector() {
-                values[flip(at)] * factor
-            } else {
-                f64::NAN
-            }
-        })
-    };
-    let gain = model.gain;
-    let around = (
-        layout.window.height / 2 / layout.step_y,
-        layout.window.width / 2 / layout.step_x,
-    );
-    let doubt = |axis: fn(&Finding) -> Option<f64>| {
-        let variances = Array2::from_shape_fn(findings.dim(), |at| {
-            let measured = judged.status[at] == Status::Measured;
-            measured.then(|| axis(&findings[at])).flatten()
-        });
-        Array2::from_shape_fn(grid.shape(), |at| {
-            pooled(&variances, flip(at), around)
-                .filter(|_| status[at] == Status::Measured)
-                .map_or(f64::NAN, |u| u * gain * mm / dt)
-        })
-    };
-    let unc = Some((doubt(|f| f.variance.0), doubt(|f| f.variance.1)));
-    let u = take(&judged.shifts.x, mm / dt);
-    let v = take(&judged.shifts.y, -mm / dt);
-    VectorField {
-        u,
-        v,
-        status,
-        unc,
-        ..blank
-    }
-}
-
-/// The field that a pair of (width, height) px will give by this plan, before anything is
-/// measured: its grid, units, window and the correlation of its errors. Every vector is outside.
-///
-/// # Errors
-/// [`InterrogateError::ImageTooSmall`].
-pub fn blank_field(
-    plan: &Plan,
-    (width, height): (usize, usize),
-    scale: &Scale,
-    label: &str,
-) -> Result<VectorField, InterrogateError> {
-    let layouts = layouts(plan, width, height, label)?;
-    match layouts.last() {
-        Some(last) => Ok(blank(last, plan.error_model(), height, scale, label)),
-        None => unreachable!("a plan has at least one pass"),
-    }
-}
-
-fn blank(
-    layout: &Layout,
-    model: &ErrorModel,
-    height: usize,
-    scale: &Scale,
-    label: &str,
-) -> VectorField {
-    let (length, mm) = scale.length();
-    let lowest = layout.first_y() + ((layout.rows - 1) * layout.step_y) as f64;
-    let grid = Grid {
-        nx: layout.columns,
-        ny: layout.rows,
-        x0: layout.first_x() * mm,
-        y0: (height as f64 - 1.0 - lowest) * mm,
-        dx: layout.step_x as f64 * mm,
-        dy: layout.step_y as f64 * mm,
-        length,
-    };
-    let nothing = Array2::from_elem(grid.shape(), f64::NAN);
-    VectorField {
-        grid,
-        time: scale.time().0,
-        u: nothing.clone(),
-        v: nothing.clone(),
-        status: Array2::from_elem(grid.shape(), Status::Outside),
-        unc: Some((nothing.clone(), nothing)),
-        error_correlation: Some(Arc::clone(&model.correlation)),
-        window: Some((
-            layout.window.width as f64 * mm,
-            layout.window.height as f64 * mm,
-        )),
-        label: label.to_owned(),
-    }
 }

@@ -229,6 +229,7 @@ pub(super) fn list_of(kind: &str) -> String {
         "eddies" | "true/false" => format!("list of {kind}"),
         kind if kind.starts_with("series") => format!("list of {kind}"),
         kind if kind.ends_with("ddy") => format!("list of {}ies", &kind[..kind.len() - 1]),
+        kind if kind.starts_with("point ") => format!("list of points{}", &kind[5..]),
         kind if kind.starts_with("list") => format!("list of lists{}", &kind[4..]),
         kind => format!("list of {kind}s"),
     }

@@ -33,8 +33,14 @@ pub(super) fn dimensions(array: &str) -> usize {
     if array == RECORD { 2 } else { 3 }
 }
 
-/// The metadata of the group itself.
-pub(super) fn group(blank: &VectorField, basis: &Value, labels: &[String]) -> Value {
+/// The metadata of the group itself; `masks` are the different masks and which of them each pair
+/// has.
+pub(super) fn group(
+    blank: &VectorField,
+    basis: &Value,
+    labels: &[String],
+    masks: Option<(Value, Value)>,
+) -> Value {
     let mut attributes = object(json!({
         "title": "vector fields of a recording of seeded flow",
         "axes": "x to the right, y upwards; the first row is the lowest",
@@ -47,6 +53,10 @@ pub(super) fn group(blank: &VectorField, basis: &Value, labels: &[String]) -> Va
             "window_size_units".to_owned(),
             json!(blank.grid.length.to_string()),
         );
+    }
+    if let Some((masks, of_pairs)) = masks {
+        attributes.insert("masks".to_owned(), masks);
+        attributes.insert("pair_masks".to_owned(), of_pairs);
     }
     group_document(attributes)
 }
@@ -122,8 +132,8 @@ pub(super) fn frame_array(name: &str, blank: &VectorField, pairs: usize) -> Valu
         "v_unc" => velocity("standard uncertainty of v", "status"),
         RECORD => json!({
             "long_name": "what each frame was made from: BLAKE3 hashes of the plan, calibration \
-                and program (bytes 0 to 31), of the pixels of both exposures (32 to 63), and of \
-                the chunks u, v, u_unc, v_unc, status (64 to 95)",
+                and program (bytes 0 to 31), of the pixels of both exposures and which of them \
+                are hidden (32 to 63), and of the chunks u, v, u_unc, v_unc, status (64 to 95)",
         }),
         _ => json!({
             "long_name": "what each vector is worth",

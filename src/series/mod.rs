@@ -8,10 +8,11 @@
 //! # What is kept and what is computed again
 //!
 //! A frame counts as there once its record is: the record is written last, and carries the BLAKE3
-//! hashes of the plan, of the pixels, and of the frame's own chunks. A run into a group that is
-//! there already keeps each frame whose three hashes fit and computes the others. So a run killed
-//! at any moment goes on where it was, a changed image costs the frames it is in, a changed plan
-//! costs all, and a chunk changed by anyone is noticed.
+//! hashes of the plan, of the pixels with which of them are hidden, and of the frame's own chunks.
+//! A run into a group that is there already keeps each frame whose three hashes fit and computes
+//! the others. So a run killed at any moment goes on where it was, a changed image costs the
+//! frames it is in, a changed mask those in which it hides other pixels, a changed plan all, and a
+//! chunk changed by anyone is noticed.
 //!
 //! Two runs that write one group at once disturb each other: each then says so rather than give
 //! a wrong field.

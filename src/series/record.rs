@@ -3,10 +3,11 @@
 use std::path::Path;
 
 use blake3::{Hash, Hasher};
+use ndarray::Array2;
 use serde_json::{Value, json};
 
 use super::SeriesError;
-use crate::frames::{Frame, Recording, Scale};
+use crate::frames::{Frame, Mask, Pair, Recording, Scale};
 use crate::interrogate::{ALGORITHM, Plan};
 
 /// Bytes of a record: three hashes of 32.
@@ -65,8 +66,13 @@ pub(super) fn hash_of_basis(basis: &Value) -> Hash {
     blake3::hash(basis.to_string().as_bytes())
 }
 
-/// Hash of the sizes and pixels of both exposures, whatever files they stand in.
-pub(super) fn hash_of_frames(first: &Frame, second: &Frame) -> Hash {
+/// Hash of the sizes and pixels of both exposures, whatever files they stand in, and of which
+/// pixels are hidden, whatever hides them.
+pub(super) fn hash_of_frames(
+    first: &Frame,
+    second: &Frame,
+    hidden: &[Option<Array2<bool>>; 2],
+) -> Hash {
     let mut hasher = Hasher::new();
     let mut bytes = Vec::new();
     for frame in [first, second] {
@@ -78,13 +84,48 @@ pub(super) fn hash_of_frames(first: &Frame, second: &Frame) -> Hash {
             hasher.update(&bytes);
         }
     }
+    for (exposure, hidden) in [1u8, 2].iter().zip(hidden) {
+        if let Some(hidden) = hidden {
+            hasher.update(&[*exposure]);
+            bytes.clear();
+            bytes.extend(hidden.iter().map(|hidden| u8::from(*hidden)));
+            hasher.update(&bytes);
+        }
+    }
     hasher.finalize()
+}
+
+/// The different masks of a recording, each as what hides pixels of the first and of the second
+/// exposure, and for every pair which of them it has; `None` where no pair has any.
+pub(super) fn masks(pairs: &[Pair]) -> Option<(Value, Value)> {
+    let mut different: Vec<[&[Mask]; 2]> = Vec::new();
+    let mut place = |pair| {
+        let masks = Pair::masks(pair);
+        if masks.concat().is_empty() {
+            return None;
+        }
+        let known = different.iter().position(|other| *other == masks);
+        Some(known.unwrap_or_else(|| {
+            different.push(masks);
+            different.len() - 1
+        }))
+    };
+    let of_pairs: Vec<Option<usize>> = pairs.iter().map(&mut place).collect();
+    if different.is_empty() {
+        return None;
+    }
+    let all = |masks: &[Mask]| masks.iter().map(Mask::description).collect::<Vec<_>>();
+    let described = different
+        .iter()
+        .map(|[first, second]| json!({ "first": all(first), "second": all(second) }));
+    Some((described.collect(), json!(of_pairs)))
 }
 
 /// A name for the series of this recording by this plan, the same each time: so a script that is
 /// run again finds what it wrote, and two plans or two recordings do not meet in one place.
 ///
-/// It depends on the plan and on the names of the files, or on the pixels of pairs in memory.
+/// It depends on the plan, on the masks, and on the names of the files or the pixels of pairs in
+/// memory.
 ///
 /// # Errors
 /// [`SeriesError::NoPairs`], or a frame in memory that is refused.
@@ -107,7 +148,13 @@ pub fn default_name(recording: &Recording, plan: &Plan) -> Result<String, Series
         }
         if places.is_empty() {
             let (first, second) = pair.load()?;
-            hasher.update(hash_of_frames(&first, &second).as_bytes());
+            hasher.update(hash_of_frames(&first, &second, &[None, None]).as_bytes());
+        }
+        for (exposure, masks) in [1u8, 2].iter().zip(pair.masks()) {
+            for mask in masks {
+                hasher.update(&[*exposure]);
+                hasher.update(mask.digest().as_bytes());
+            }
         }
     }
     let hash = hasher.finalize().to_hex();
@@ -140,14 +187,40 @@ mod tests {
             pixels: ndarray::Array2::from_elem((rows, columns), level),
             bits: 8,
         };
-        let base = hash_of_frames(&frame(4, 6, 1.0), &frame(4, 6, 2.0));
-        assert_eq!(base, hash_of_frames(&frame(4, 6, 1.0), &frame(4, 6, 2.0)));
+        let all_lit = [None, None];
+        let of = |first, second| hash_of_frames(&first, &second, &all_lit);
+        let base = of(frame(4, 6, 1.0), frame(4, 6, 2.0));
+        assert_eq!(base, of(frame(4, 6, 1.0), frame(4, 6, 2.0)));
         for (first, second) in [
             (frame(4, 6, 2.0), frame(4, 6, 1.0)),
             (frame(6, 4, 1.0), frame(6, 4, 2.0)),
             (frame(4, 6, 1.0), frame(4, 6, 2.000_000_2)),
         ] {
-            assert_ne!(base, hash_of_frames(&first, &second));
+            assert_ne!(base, of(first, second));
+        }
+    }
+
+    #[test]
+    fn the_hash_of_frames_tells_apart_what_is_hidden_in_which() {
+        let frame = Frame {
+            pixels: Array2::zeros((4, 6)),
+            bits: 8,
+        };
+        let hidden = |at| {
+            let mut hidden = Array2::from_elem((4, 6), false);
+            hidden[at] = true;
+            Some(hidden)
+        };
+        let hashes = [
+            [None, None],
+            [hidden((1, 2)), None],
+            [None, hidden((1, 2))],
+            [hidden((1, 2)), hidden((1, 2))],
+            [hidden((2, 1)), None],
+        ]
+        .map(|hidden| hash_of_frames(&frame, &frame, &hidden));
+        for (k, hash) in hashes.iter().enumerate() {
+            assert!(!hashes[..k].contains(hash), "{k}");
         }
     }
 }

@@ -9,16 +9,16 @@ use serde_json::Value;
 use super::contents::{self, Chunks, FRAME_ARRAYS, RECORD};
 use super::group::Group;
 use super::in_flight::in_flight;
-use super::record::{Record, basis, hash_of_basis, hash_of_frames};
+use super::record::{Record, basis, hash_of_basis, hash_of_frames, masks};
 use super::{Series, SeriesError};
 use crate::field::VectorField;
 use crate::frames::{Pair, Recording, Scale};
-use crate::interrogate::{Plan, blank_field, interrogate};
+use crate::interrogate::{Plan, blank_field, interrogate_images};
 use crate::task::Task;
 
 /// Interrogates every pair of a recording, over all cores, into the Zarr group `folder`.
 ///
-/// Frames that are there already from the same images and plan are kept; the others are
+/// Frames that are there already from the same images, masks and plan are kept; the others are
 /// computed, and written one by one as they come. As many pairs are in memory as there are
 /// threads. Reports progress in pairs, those kept included. The fields do not depend on the
 /// number of threads, nor on how often a run was broken off.
@@ -36,14 +36,9 @@ pub fn interrogate_series(
     let (size, scale) = shared(recording)?;
     let blank = blank_field(plan, size, &scale, "")?;
     let basis = basis(plan, size, &scale);
-    let labels: Vec<String> = recording
-        .pairs()
-        .iter()
-        .map(|p| p.label().to_owned())
-        .collect();
     let total = recording.len();
     let group = Group::take_over(folder, hash_of_basis(&basis), total)?;
-    describe(&group, &blank, &basis, &labels)?;
+    describe(&group, &blank, &basis, recording)?;
     let run = Run {
         group: &group,
         basis: hash_of_basis(&basis),
@@ -63,7 +58,7 @@ pub fn interrogate_series(
     Ok(Series {
         group,
         blank,
-        labels,
+        labels: labels(recording),
         chunks,
         kept,
     })
@@ -90,14 +85,21 @@ fn shared(recording: &Recording) -> Result<((usize, usize), Scale), SeriesError>
     }
 }
 
+fn labels(recording: &Recording) -> Vec<String> {
+    let pairs = recording.pairs().iter();
+    pairs.map(|pair| pair.label().to_owned()).collect()
+}
+
 /// Writes all metadata, the group's first: by it a later run knows the folder.
 fn describe(
     group: &Group,
     blank: &VectorField,
     basis: &Value,
-    labels: &[String],
+    recording: &Recording,
 ) -> Result<(), SeriesError> {
-    group.describe("", &contents::group(blank, basis, labels))?;
+    let masks = masks(recording.pairs());
+    let labels = labels(recording);
+    group.describe("", &contents::group(blank, basis, &labels, masks))?;
     for (name, document, bytes) in contents::coordinates(blank, labels.len()) {
         group.describe(name, &document)?;
         let dimensions = document["shape"].as_array().map_or(1, Vec::len);
@@ -121,9 +123,9 @@ struct Run<'a> {
 impl Run<'_> {
     /// Keeps a frame that is there, or computes and writes it; gives the hash of its chunks.
     fn frame(&self, index: usize, pair: &Pair) -> Result<Hash, SeriesError> {
-        let pair = pair.in_memory()?;
         let (first, second) = pair.load()?;
-        let images = hash_of_frames(&first, &second);
+        let hidden = pair.hidden(&first, &second)?;
+        let images = hash_of_frames(&first, &second, &hidden);
         if let Some(record) = self.group.record(index)
             && (record.basis, record.images) == (self.basis, images)
             && self.group.read(index, record.chunks).is_some()
@@ -131,7 +133,16 @@ impl Run<'_> {
             self.kept.fetch_add(1, Ordering::Relaxed);
             return Ok(record.chunks);
         }
-        let chunks = Chunks::of(&interrogate(&pair, self.plan, self.task)?);
+        let field = interrogate_images(
+            &first.pixels,
+            &second.pixels,
+            [hidden[0].as_ref(), hidden[1].as_ref()],
+            self.plan,
+            &pair.scale(),
+            pair.label(),
+            self.task,
+        )?;
+        let chunks = Chunks::of(&field);
         let record = Record {
             basis: self.basis,
             images,

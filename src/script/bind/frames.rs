@@ -35,8 +35,9 @@ impl Kind for Recording {
             .size()
             .map_or_else(String::new, |(w, h)| format!(" of {w} x {h} px"));
         let pairs = if self.len() == 1 { "pair" } else { "pairs" };
+        let masked = masked(self.pairs().iter().any(is_masked));
         format!(
-            "recording, {} {pairs}{size}; {}",
+            "recording, {} {pairs}{size}; {}{masked}",
             self.len(),
             calibration(self.scale())
         )
@@ -60,12 +61,21 @@ impl Kind for Pair {
     fn show(&self) -> String {
         let (width, height) = self.size();
         format!(
-            "pair {}: {}, {width} x {height} px; {}",
+            "pair {}: {}, {width} x {height} px; {}{}",
             self.index(),
             self.label(),
-            calibration(self.scale())
+            calibration(self.scale()),
+            masked(is_masked(self))
         )
     }
+}
+
+fn is_masked(pair: &Pair) -> bool {
+    pair.masks().iter().any(|masks| !masks.is_empty())
+}
+
+fn masked(is: bool) -> &'static str {
+    if is { "; masked" } else { "" }
 }
 
 fn calibration(scale: Scale) -> String {

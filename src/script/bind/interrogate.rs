@@ -117,14 +117,14 @@ pub(super) fn records(room: &mut Room) {
         .about(
             "The vector fields of all pairs, over all cores, with progress; Ctrl-C stops it. They \
              are written as one Zarr group below the output folder, frame by frame: run again, \
-             what is there from the same images and plan is kept, and only the rest is computed.",
+             what is there from the same images, masks and plan is kept, and only the rest is computed.",
         )
         .words("correlate displacement velocity vectors measure series all zarr resume")
         .input("plan", "", "how; the default plan when left out")
         .input(
             "folder",
             "",
-            "name of the Zarr group; left out, series/….zarr by the files and the plan",
+            "name of the Zarr group; left out, series/….zarr by the files, masks and plan",
         )
         .unit("px/frame, or mm/s for a calibrated recording")
         .errors(

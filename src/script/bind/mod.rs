@@ -10,6 +10,7 @@ mod figure;
 mod frames;
 mod interrogate;
 mod lists;
+mod mask;
 mod mathematics;
 mod place;
 mod plane;
@@ -24,8 +25,9 @@ use super::draft::Room;
 type Write = fn(&mut Room);
 
 /// Every room with the function that writes its records, in the order help lists them.
-pub(super) const ROOMS: [(&str, Write); 11] = [
+pub(super) const ROOMS: [(&str, Write); 12] = [
     ("recordings", frames::records),
+    ("masks", mask::records),
     ("interrogation", interrogate::records),
     ("fields", field::records),
     ("eddies", vortex::records),
