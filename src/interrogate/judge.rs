@@ -7,6 +7,7 @@ use super::pass::Finding;
 use super::plan::Plan;
 use super::predictor::Shifts;
 use super::run::Stage;
+use super::significance::significant;
 use super::validate::{MedianTest, fill};
 use crate::field::Status;
 
@@ -24,6 +25,7 @@ pub(super) fn judge(
     stage: &Stage,
     hidden: Option<&Array2<bool>>,
     plan: &Plan,
+    last: bool,
 ) -> Judged {
     let options = plan.options();
     let layout = &stage.layout;
@@ -59,10 +61,17 @@ pub(super) fn judge(
             }
         }
     }
+    if last {
+        good = significant(&shifts, findings, &good, layout);
+    }
     fill(&mut shifts, &good);
+    let none = !good.iter().any(|good| *good);
     let status = Array2::from_shape_fn(layout.shape(), |at| {
         if good[at] {
             Status::Measured
+        } else if none {
+            // Nothing to fill in from.
+            Status::Outside
         } else if !lit[at] {
             if behind_mask(layout, at, findings[at].lit, hidden) {
                 Status::Masked

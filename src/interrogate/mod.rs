@@ -22,6 +22,7 @@ mod predictor;
 mod raw_plane;
 mod response;
 mod run;
+mod significance;
 mod spline;
 mod statistics;
 mod taper;

@@ -8,6 +8,7 @@ use rayon::prelude::*;
 use super::deform::{Exposures, Row};
 use super::layout::Layout;
 use super::peak::{Patch, Peak};
+use super::significance::Background;
 use super::statistics::{StatisticsScratch, lean_variance, variance};
 use super::taper::Taper;
 use super::transform::{
@@ -27,6 +28,11 @@ pub(crate) struct Finding {
     pub variance: (Option<f64>, Option<f64>),
     /// Height of that peak as a correlation coefficient, -1 to 1.
     pub height: f32,
+    /// How far that peak stands above the mean of the rest of the plane, in units of the rest's
+    /// scatter; 0 where it was not asked for.
+    pub prominence: f32,
+    /// Height of that peak over that of the next highest; 0 where it was not asked for.
+    pub ratio: f32,
     /// Share of the window that was lit in both exposures.
     pub lit: f32,
 }
@@ -36,6 +42,8 @@ impl Finding {
         shift: (0.0, 0.0),
         variance: (None, None),
         height: 0.0,
+        prominence: 0.0,
+        ratio: 0.0,
         lit: 0.0,
     };
 }
@@ -133,6 +141,11 @@ impl<'a> Pass<'a> {
             let leans = self
                 .statistics
                 .then(|| self.leans(&windows, &moments, &mut bench.statistics));
+            let background = self.statistics.then(|| {
+                let window = self.layout.window;
+                let reach = (self.search.reach_x, self.search.reach_y);
+                Background::of(&bench.planes, (window.width, window.height), reach)
+            });
             let lit = if dark {
                 bench.lit_shares(batch, self.layout.window.height)
             } else {
@@ -144,7 +157,17 @@ impl<'a> Pass<'a> {
                     lit: lit[l],
                     ..if norm > 0.0 {
                         let leans = leans.map(|axes| axes.map(|lanes| lanes[l]));
-                        self.read(&bench.planes, l, peaks.first[l], norm, leans)
+                        let mut found = self.read(&bench.planes, l, peaks.first[l], norm, leans);
+                        if let Some(background) = &background {
+                            let first = &peaks.first[l];
+                            let patch = self.correlator.neighbourhood(&bench.planes, l, first);
+                            let (mean, scatter) = background.without(l, &patch);
+                            let height = f64::from(first.height);
+                            found.prominence = ((height - mean) / scatter) as f32;
+                            found.ratio =
+                                first.height / peaks.second[l].height.max(f32::MIN_POSITIVE);
+                        }
+                        found
                     } else {
                         Finding::NOTHING
                     }
@@ -199,6 +222,8 @@ impl<'a> Pass<'a> {
             ),
             variance,
             height: first.height * norm,
+            prominence: 0.0,
+            ratio: 0.0,
             lit: 1.0,
         }
     }

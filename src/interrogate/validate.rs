@@ -87,18 +87,20 @@ impl MedianTest {
         at: (usize, usize),
         shift: (f64, f64),
     ) -> Option<f64> {
-        let (lines, n) = along_lines(shifts, good, at);
+        let (lines, n) = along_lines(shifts, good, at, (1, 1));
         (n >= 3).then(|| self.joined(&lines[..n], shift))
     }
 }
 
-/// What each of the four lines through a cell leads to expect there, from good cells only: the
+/// What each of the four lines through a cell leads to expect there, from good cells only, taken
+/// every `stride` (rows, columns): the
 /// cubic through ±1 and ±2, (4 (n₁ + n₋₁) - (n₂ + n₋₂)) / 6; the middle of ±1 where ±2 are not
 /// both good; and on one side alone the straight continuation 2 n₁ - n₂.
-fn along_lines(
+pub(crate) fn along_lines(
     shifts: &Shifts,
     good: &Array2<bool>,
     (j, i): (usize, usize),
+    stride: (usize, usize),
 ) -> ([(f64, f64); 4], usize) {
     let (rows, columns) = good.dim();
     let cell = |dj: isize, di: isize| {
@@ -111,6 +113,7 @@ fn along_lines(
         (sum(|d| d.0), sum(|d| d.1))
     };
     let line = |(dj, di): (isize, isize)| {
+        let (dj, di) = (dj * stride.0 as isize, di * stride.1 as isize);
         let at = |k: isize| cell(k * dj, k * di);
         match (at(-2), at(-1), at(1), at(2)) {
             (Some(a), Some(b), Some(c), Some(d)) => {
@@ -166,7 +169,7 @@ pub(crate) fn fill(shifts: &mut Shifts, good: &Array2<bool>) {
                     }
                 }
             }
-            let (lines, count) = along_lines(shifts, &filled, (j, i));
+            let (lines, count) = along_lines(shifts, &filled, (j, i), (1, 1));
             if count >= 3 {
                 let middle = |part: fn(&(f64, f64)) -> f64| {
                     let mut values: [f64; 4] = std::array::from_fn(|k| part(&lines[k]));

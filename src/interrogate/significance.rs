@@ -1,0 +1,132 @@
+//! Whether a correlation peak could be chance.
+//!
+//! Windows that hold no common pattern have planes all the same, and those have a highest place.
+//! How far a peak stands out of its plane, in units of the plane's own scatter, and how far above
+//! the next peak, tells one from the other; so does what windows beside it say that share no pixel
+//! with it. Where particles are few even the best chance peak stands out, so that a peak alone is
+//! trusted only among windows that agree.
+
+use ndarray::Array2;
+
+use super::layout::Layout;
+use super::pass::Finding;
+use super::predictor::Shifts;
+use super::validate::along_lines;
+use multiversion::multiversion;
+
+use super::transform::{LANES, Lanes, lanes_at};
+
+/// Sums over the searched part of the planes of a batch.
+pub(crate) struct Background {
+    sum: Lanes,
+    squares: Lanes,
+    samples: usize,
+}
+
+impl Background {
+    /// Over the samples up to `reach` (columns, rows) from the middle of planes of `size`
+    /// (columns, rows).
+    pub fn of(planes: &[f32], size: (usize, usize), reach: (usize, usize)) -> Self {
+        sums(planes, size, reach)
+    }
+
+    /// Mean, and scatter about it, of the plane in one lane without the samples of `peak`.
+    pub fn without(&self, lane: usize, peak: &[[f32; 5]; 5]) -> (f64, f64) {
+        let taken = peak.as_flattened();
+        let n = (self.samples as f64 - taken.len() as f64).max(1.0);
+        let of = |whole: f32, part: &dyn Fn(f64) -> f64| {
+            f64::from(whole) - taken.iter().map(|r| part(f64::from(*r))).sum::<f64>()
+        };
+        let mean = of(self.sum[lane], &|r| r) / n;
+        let square = of(self.squares[lane], &|r| r * r) / n;
+        (mean, (square - mean * mean).max(0.0).sqrt())
+    }
+}
+
+#[multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
+fn sums(planes: &[f32], (width, height): (usize, usize), reach: (usize, usize)) -> Background {
+    let (mut sum, mut squares) = ([0f32; LANES], [0f32; LANES]);
+    let mut samples = 0;
+    for down in (0..=reach.1).chain(height - reach.1..height) {
+        for part in [0..reach.0 + 1, width - reach.0..width] {
+            for column in part {
+                let r = lanes_at(planes, (down * width + column) * LANES);
+                for l in 0..LANES {
+                    sum[l] += r[l];
+                    squares[l] += r[l] * r[l];
+                }
+                samples += 1;
+            }
+        }
+    }
+    Background {
+        sum,
+        squares,
+        samples,
+    }
+}
+
+/// Peaks taken for real without the word of their neighbours: 2 % of the windows of 32 px in
+/// unrelated images of 0.06 particles a px² reach this, and all in related ones.
+const PROMINENT: (f32, f32) = (6.0, 1.3);
+
+/// Prominence that one line of neighbours in agreement makes up for.
+const FAIR: f32 = 5.0;
+
+/// Which of the windows that are `good` so far hold a peak that is no chance.
+///
+/// A window is supported when two of the four lines through it, over windows that share no pixel
+/// with it, lead to expect its shift to within 1/32 of the window, or one does and its peak is
+/// fairly prominent. One that is not supported stays if its peak is prominent by itself and at least half
+/// of the up to eight independent windows about it are supported.
+pub(crate) fn significant(
+    shifts: &Shifts,
+    findings: &Array2<Finding>,
+    good: &Array2<bool>,
+    layout: &Layout,
+) -> Array2<bool> {
+    let window = layout.window;
+    let stride = (
+        window.height.div_ceil(layout.step_y),
+        window.width.div_ceil(layout.step_x),
+    );
+    let tolerance = window.width.min(window.height) as f64 / 32.0;
+    let supported = Array2::from_shape_fn(good.dim(), |at| {
+        if !good[at] {
+            return false;
+        }
+        let (lines, n) = along_lines(shifts, good, at, stride);
+        let agreeing = lines[..n]
+            .iter()
+            .filter(|(x, y)| (x - shifts.x[at]).hypot(y - shifts.y[at]) <= tolerance)
+            .count();
+        agreeing >= 2 || (agreeing == 1 && findings[at].prominence >= FAIR)
+    });
+    let (rows, columns) = good.dim();
+    Array2::from_shape_fn(good.dim(), |(j, i)| {
+        let finding = &findings[(j, i)];
+        if supported[(j, i)] || !good[(j, i)] {
+            return supported[(j, i)];
+        }
+        if finding.prominence < PROMINENT.0 || finding.ratio < PROMINENT.1 {
+            return false;
+        }
+        let about = |at: usize, stride: usize, n: usize| {
+            [
+                at.checked_sub(stride),
+                Some(at),
+                Some(at + stride).filter(|at| *at < n),
+            ]
+        };
+        let (mut all, mut yes) = (0, 0);
+        for jj in about(j, stride.0, rows).into_iter().flatten() {
+            for ii in about(i, stride.1, columns).into_iter().flatten() {
+                if (jj, ii) != (j, i) {
+                    all += 1;
+                    yes += usize::from(supported[(jj, ii)]);
+                }
+            }
+        }
+        2 * yes >= all
+    })
+}
