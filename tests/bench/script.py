@@ -72,7 +72,7 @@ def one_pass(images, windows, reach, statistics, workers):
         sought = plane[:, near][:, :, near].reshape(len(a), -1)
         row, column = np.divmod(sought.argmax(1), len(near))
         row, column = row - reach, column - reach
-        offset, top, sides = read_peaks(plane / energy[:, None, None], row, column, windows.left)
+        offset, top, sides = read_peaks(plane, energy, row, column, windows.left)
         shifts.append(np.stack([column, row]) + offset)
         if statistics:
             slope = 4 * energy * sides * np.log(np.where(top > sides, top / sides, np.nan))
@@ -80,12 +80,12 @@ def one_pass(images, windows, reach, statistics, workers):
     return np.stack(shifts, 1), np.stack(variances, 1) if statistics else None
 
 
-def read_peaks(plane, row, column, left):
+def read_peaks(plane, energy, row, column, left):
     """Three-point Gaussian fit in the smoothed plane: offsets (x, y), top, mean of the sides."""
     n, around = plane.shape[1], np.arange(-2, 3)
     r, c = row[:, None] + around, column[:, None] + around
     patch = plane[np.arange(len(plane))[:, None, None], r[:, :, None] % n, c[:, None, :] % n]
-    patch = patch / (left[abs(r)][:, :, None] * left[abs(c)][:, None, :])
+    patch = patch / (energy[:, None, None] * left[abs(r)][:, :, None] * left[abs(c)][:, None, :])
     rows = sum(NEAR[k] * patch[:, k : k + 3] for k in range(3))
     smooth = sum(NEAR[k] * rows[:, :, k : k + 3] for k in range(3))
     before = np.stack([smooth[:, 1, 0], smooth[:, 0, 1]])
@@ -190,7 +190,7 @@ def interrogate(first, second, sides=(64, 32, 32), overlap=0.5, workers=1):
                 right, down = read(rows.ravel(), columns.ravel())
                 coefficients = coefficients or list(pool.map(filtered, exposures))
                 images = list(pool.map(deform, coefficients, (-0.5, 0.5)))
-            reach = side // 4 if predictor else side // 2 - 1
+            reach = max(2, side // 4) if predictor else side // 2 - 1
             field, variances = one_pass(images, windows, reach, last, workers)
             if predictor:
                 field += read(windows.y, windows.x)
@@ -198,9 +198,12 @@ def interrogate(first, second, sides=(64, 32, 32), overlap=0.5, workers=1):
             predictor = windows, smooth(field, windows).astype(np.float32)
     # Too few particles in one window to say its own variance well: the mean over half a window.
     pool_size = 2 * (windows.side // 2 // windows.step) + 1
-    known = np.where(good & np.isfinite(variances), variances, 0)
-    mean = ndimage.uniform_filter(np.stack([*known, good.astype(float)]), (0, pool_size, pool_size))
-    uncertainty = np.sqrt((mean[:2] / mean[2].clip(1e-9)).clip(0))
+    known = good & np.isfinite(variances)
+    total, count = (
+        ndimage.uniform_filter(values, (0, pool_size, pool_size), mode="constant")
+        for values in (np.where(known, variances, 0), known.astype(float))
+    )
+    uncertainty = np.sqrt((total / count.clip(1e-9)).clip(0))
     return field, np.where(good, uncertainty, np.nan), good, windows
 
 
