@@ -2,7 +2,8 @@
 # Whole interrogation of one 1024 x 1024 pair (windows 64, 32, 32 px, overlap 0.5) by kolk, by a
 # numerical script (numpy and scipy, script.py) on the very same images, and beside them the bare
 # transforms of the same windows by a general-purpose C library. The sides run in turn; printed are
-# the least times and their ratios. Needs cc, FFTW 3 (single precision) and python3 with venv, for
+# the least times and their ratios. The machine must be otherwise quiet: on a busy one a long run is
+# always disturbed, a short one sometimes not, and ratios come out too large. Needs cc, FFTW 3 (single precision) and python3 with venv, for
 # this comparison only; numpy, scipy and Pillow are installed into a temporary folder.
 #
 #   bash tests/bench/compare.sh [turns]
