@@ -6,7 +6,7 @@ done for all windows at once. Same windows, weights, deformation, spline degrees
 uncertainty as kolk; simpler at the edges (mirrored images instead of dark ones), in the validation
 (no second look at rejected vectors) and in the uncertainty (that of the last windows alone).
 Half its time goes into scipy's map_coordinates; reading the images by 36 gathers in numpy instead
-takes a third off the whole (tried, and left out as what nobody would write).
+takes a third off the whole (tried; left out for its length).
 
     python3 -m venv /tmp/outside && /tmp/outside/bin/pip install numpy scipy pillow
     /tmp/outside/bin/python tests/bench/script.py first.tif second.tif
