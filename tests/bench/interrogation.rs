@@ -1,9 +1,11 @@
 //! One whole 1024 x 1024 pair: windows 64, 32, 32 px, overlap 0.5, with deformation, validation
 //! and uncertainty. Prints the least and the median time on one thread and on all, and on request
 //! where the time goes. `fftw_bare.c` beside it times the bare transforms of the same windows by a
-//! general-purpose C library; `tests/bench/compare.sh` runs both in turn and prints the ratios.
+//! general-purpose C library, `script.py` the whole by a numerical script; `tests/bench/compare.sh`
+//! runs all in turn and prints the ratios.
 //!
-//! `cargo bench --bench interrogation [-- repeats]`
+//! `cargo bench --bench interrogation [-- repeats] [folder]`; the pair is left in the folder as
+//! `first.tif` and `second.tif`.
 
 #![allow(
     clippy::print_stdout,
@@ -11,10 +13,12 @@
     reason = "a benchmark prints, and has nobody to report an error to"
 )]
 
+use std::path::Path;
 use std::time::Instant;
 
 use kolk::frames::{Pair, Scale};
 use kolk::interrogate::{Plan, PlanOptions, WindowSize, interrogate};
+use kolk::store::write_tiff;
 use kolk::synth::{Flow, ImageOptions, LambOseen, Uniform, particle_images};
 use kolk::task::Task;
 
@@ -37,6 +41,11 @@ fn main() {
         ..ImageOptions::default()
     };
     let (first, second) = particle_images(&flow, &options).expect("good options");
+    if let Some(folder) = std::env::args().skip(1).find(|a| Path::new(a).is_dir()) {
+        for (frame, name) in [(&first, "first.tif"), (&second, "second.tif")] {
+            write_tiff(&Path::new(&folder).join(name), frame).expect("a file written");
+        }
+    }
     let pair = Pair::from_frames(first, second, Scale::default(), "bench");
     let windows_px = [64, 32, 32].map(|side| WindowSize {
         width: side,
