@@ -16,7 +16,8 @@ pub enum Status {
     Replaced,
     /// Hidden by a mask, or absent from the file: no vector.
     Masked,
-    /// The window, moved with the flow, leaves the image: no vector.
+    /// The window, moved with the flow, leaves the image, or not one vector of the field could be
+    /// measured that it might be filled in from: no vector.
     Outside,
 }
 

@@ -69,15 +69,10 @@ pub(super) fn judge(
     let status = Array2::from_shape_fn(layout.shape(), |at| {
         if good[at] {
             Status::Measured
-        } else if none {
-            // Nothing to fill in from.
+        } else if !lit[at] && behind_mask(layout, at, findings[at].lit, hidden) {
+            Status::Masked
+        } else if !lit[at] || none {
             Status::Outside
-        } else if !lit[at] {
-            if behind_mask(layout, at, findings[at].lit, hidden) {
-                Status::Masked
-            } else {
-                Status::Outside
-            }
         } else {
             Status::Replaced
         }

@@ -73,12 +73,22 @@ const PROMINENT: (f32, f32) = (6.0, 1.3);
 /// Prominence that one line of neighbours in agreement makes up for.
 const FAIR: f32 = 5.0;
 
+/// What the windows that share no pixel with one say of it.
+#[derive(Clone, Copy, PartialEq)]
+enum Support {
+    /// There are too few to say anything.
+    Silent,
+    Given,
+    Refused,
+}
+
 /// Which of the windows that are `good` so far hold a peak that is no chance.
 ///
 /// A window is supported when two of the four lines through it, over windows that share no pixel
 /// with it, lead to expect its shift to within 1/32 of the window, or one does and its peak is
-/// fairly prominent. One that is not supported stays if its peak is prominent by itself and at least half
-/// of the up to eight independent windows about it are supported.
+/// fairly prominent. One that is not supported stays if its peak is prominent by itself and at
+/// least half of the up to eight independent windows about it that have anything to say for
+/// themselves are supported.
 pub(crate) fn significant(
     shifts: &Shifts,
     findings: &Array2<Finding>,
@@ -91,42 +101,50 @@ pub(crate) fn significant(
         window.width.div_ceil(layout.step_x),
     );
     let tolerance = window.width.min(window.height) as f64 / 32.0;
-    let supported = Array2::from_shape_fn(good.dim(), |at| {
+    let support = Array2::from_shape_fn(good.dim(), |at| {
         if !good[at] {
-            return false;
+            return Support::Refused;
         }
         let (lines, n) = along_lines(shifts, good, at, stride);
+        let off = |line: &(f64, f64)| (line.0 - shifts.x[at]).hypot(line.1 - shifts.y[at]);
         let agreeing = lines[..n]
             .iter()
-            .filter(|(x, y)| (x - shifts.x[at]).hypot(y - shifts.y[at]) <= tolerance)
+            .filter(|line| off(line) <= tolerance)
             .count();
-        agreeing >= 2 || (agreeing == 1 && findings[at].prominence >= FAIR)
+        match agreeing {
+            0 if n == 0 => Support::Silent,
+            0 => Support::Refused,
+            1 if findings[at].prominence < FAIR => Support::Refused,
+            _ => Support::Given,
+        }
     });
-    let (rows, columns) = good.dim();
-    Array2::from_shape_fn(good.dim(), |(j, i)| {
-        let finding = &findings[(j, i)];
-        if supported[(j, i)] || !good[(j, i)] {
-            return supported[(j, i)];
-        }
-        if finding.prominence < PROMINENT.0 || finding.ratio < PROMINENT.1 {
-            return false;
-        }
-        let about = |at: usize, stride: usize, n: usize| {
-            [
-                at.checked_sub(stride),
-                Some(at),
-                Some(at + stride).filter(|at| *at < n),
-            ]
-        };
-        let (mut all, mut yes) = (0, 0);
-        for jj in about(j, stride.0, rows).into_iter().flatten() {
-            for ii in about(i, stride.1, columns).into_iter().flatten() {
-                if (jj, ii) != (j, i) {
-                    all += 1;
-                    yes += usize::from(supported[(jj, ii)]);
-                }
+    Array2::from_shape_fn(good.dim(), |at| {
+        let finding = &findings[at];
+        let prominent = finding.prominence >= PROMINENT.0 && finding.ratio >= PROMINENT.1;
+        good[at]
+            && (support[at] == Support::Given || (prominent && in_company(&support, at, stride)))
+    })
+}
+
+/// True unless most of the independent windows about one are refused support.
+fn in_company(support: &Array2<Support>, (j, i): (usize, usize), stride: (usize, usize)) -> bool {
+    let (rows, columns) = support.dim();
+    let about = |at: usize, stride: usize, n: usize| {
+        let after = Some(at + stride).filter(|at| *at < n);
+        [at.checked_sub(stride), Some(at), after]
+            .into_iter()
+            .flatten()
+    };
+    let (mut given, mut refused) = (0, 0);
+    for jj in about(j, stride.0, rows) {
+        for ii in about(i, stride.1, columns) {
+            match support[(jj, ii)] {
+                _ if (jj, ii) == (j, i) => {}
+                Support::Given => given += 1,
+                Support::Refused => refused += 1,
+                Support::Silent => {}
             }
         }
-        2 * yes >= all
-    })
+    }
+    given >= refused
 }

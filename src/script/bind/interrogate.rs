@@ -167,7 +167,8 @@ const POOR_YIELD: f64 = 0.7;
 fn note_poor_yield(fields: &[VectorField], recording: &str, call: &Call) {
     let count = |status| fields.iter().map(|f| f.count(status)).sum::<usize>();
     let measured = count(Status::Measured);
-    let all = measured + count(Status::Replaced);
+    let nodes: usize = fields.iter().map(|f| f.status.len()).sum();
+    let all = nodes - count(Status::Masked);
     if (measured as f64) < POOR_YIELD * all as f64 {
         let percent = 100 * measured / all;
         let note = format!(
