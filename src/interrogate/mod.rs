@@ -23,6 +23,7 @@ mod raw_plane;
 mod response;
 mod run;
 mod significance;
+mod smoothing;
 mod spline;
 mod statistics;
 mod taper;
