@@ -11,6 +11,7 @@
 
 mod deform;
 mod finish;
+mod flatten;
 mod hidden;
 mod judge;
 mod layout;

@@ -73,6 +73,10 @@ const PROMINENT: (f32, f32) = (6.0, 1.3);
 /// Prominence that one line of neighbours in agreement makes up for.
 const FAIR: f32 = 5.0;
 
+/// Correlation coefficient that counts as prominent: a texture coarser than particle images has
+/// peaks so broad that nothing in the plane is away from them.
+const HIGH: f32 = 0.7;
+
 /// What the windows that share no pixel with one say of it.
 #[derive(Clone, Copy, PartialEq)]
 enum Support {
@@ -114,13 +118,14 @@ pub(crate) fn significant(
         match agreeing {
             0 if n == 0 => Support::Silent,
             0 => Support::Refused,
-            1 if findings[at].prominence < FAIR => Support::Refused,
+            1 if findings[at].prominence < FAIR && findings[at].height < HIGH => Support::Refused,
             _ => Support::Given,
         }
     });
     Array2::from_shape_fn(good.dim(), |at| {
         let finding = &findings[at];
-        let prominent = finding.prominence >= PROMINENT.0 && finding.ratio >= PROMINENT.1;
+        let prominent = (finding.prominence >= PROMINENT.0 && finding.ratio >= PROMINENT.1)
+            || finding.height >= HIGH;
         good[at]
             && (support[at] == Support::Given || (prominent && in_company(&support, at, stride)))
     })

@@ -28,6 +28,8 @@ crate::option_keys! {
             "Displacement noise the median test tolerates.";
         least_lit: "number", "fraction", "0.5",
             "Share of a window that must lie inside the image and outside masks.";
+        flatten_px: "whole number", "px", "25",
+            "Side of the square over which the lighting is made even first: local mean and contrast are taken out; 0 for none, else 9 to 255.";
     }
 }
 
