@@ -54,6 +54,9 @@ pub struct PlanOptions {
     /// Side of the square, px, over which the lighting is made even before anything else: local
     /// mean and contrast are taken out. 0 leaves the images as they are; otherwise 9 to 255.
     pub flatten_px: usize,
+    /// Whether in every pass but the last the correlation plane of a window is averaged with those
+    /// of the windows about half a window away: for thin seeding.
+    pub join_neighbours: bool,
 }
 
 impl Default for PlanOptions {
@@ -69,6 +72,7 @@ impl Default for PlanOptions {
             median_floor_px: 0.1,
             least_lit: 0.5,
             flatten_px: 25,
+            join_neighbours: false,
         }
     }
 }

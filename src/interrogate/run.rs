@@ -142,8 +142,13 @@ pub(super) fn before_last_pass(
                 return Ok(None);
             }
             let exposures = images.exposures(stage.predictor.as_ref());
-            let findings = Pass::new(&stage.layout, stage.reach, false)?.run(&exposures, task)?;
-            Ok(Some(findings))
+            let pass = Pass::new(&stage.layout, stage.reach, false)?;
+            if !plan.options().join_neighbours {
+                return Ok(Some(pass.run(&exposures, task)?));
+            }
+            let mut sums = pass.sums();
+            pass.add(&exposures, &mut sums, task)?;
+            Ok(Some(pass.read_sums(&sums.joined(&stage.layout))))
         },
     )
 }
