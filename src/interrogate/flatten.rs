@@ -11,6 +11,8 @@ use multiversion::multiversion;
 use ndarray::{Array2, Axis, s};
 use rayon::prelude::*;
 
+use super::spline::LANES;
+
 /// Rows done in one go, whatever the number of threads, so that sums are rounded alike.
 const STRETCH: usize = 128;
 
@@ -22,17 +24,18 @@ pub(crate) fn flattened(image: &Array2<f32>, side: usize) -> Array2<f32> {
     let image = image.as_standard_layout();
     let (height, width) = image.dim();
     let n = image.len() as f64;
-    // Sums of rows, then of those: the same on any number of threads.
-    let rows = |of: &(dyn Fn(f64) -> f64 + Sync)| -> f64 {
-        let sums: Vec<f64> = image
-            .axis_iter(Axis(0))
-            .into_par_iter()
-            .map(|row| row.iter().map(|level| of(f64::from(*level))).sum())
-            .collect();
-        sums.iter().sum()
-    };
-    let mean = rows(&|level| level) / n;
-    let variance = rows(&|level| (level - mean).powi(2)) / n;
+    // About a level of the image itself, so that little is lost to rounding; sums of rows first, so
+    // that they are the same on any number of threads.
+    let about = image.first().copied().unwrap_or_default();
+    let rows: Vec<[f64; 2]> = image
+        .axis_iter(Axis(0))
+        .into_par_iter()
+        .map(|row| moments(row.to_slice().unwrap_or_default(), about))
+        .collect();
+    let sum = |k: usize| rows.iter().map(|row| row[k]).sum::<f64>() / n;
+    let (shift, square) = (sum(0), sum(1));
+    let mean = f64::from(about) + shift;
+    let variance = (square - shift * shift).max(0.0);
     let mut out = Array2::zeros((height, width));
     if variance <= (1e-6 * mean).powi(2) {
         return out;
@@ -76,6 +79,7 @@ struct Squares {
     columns: [Vec<f32>; 2],
     /// The same with zeros on either side, and what sums along the row are doubled in.
     padded: [Vec<f32>; 2],
+    longer: Vec<f32>,
     sums: [Vec<f32>; 2],
 }
 
@@ -87,6 +91,7 @@ impl Squares {
             half,
             columns: room(width),
             padded: room(wide),
+            longer: vec![0f32; wide],
             sums: room(wide),
         }
     }
@@ -110,7 +115,7 @@ impl Squares {
             padded[half..half + width].copy_from_slice(&self.columns[axis]);
             padded[..half].fill(0.0);
             padded[half + width..].fill(0.0);
-            run_sums(padded, 2 * half + 1, &mut self.sums[axis]);
+            run_sums(padded, &mut self.longer, 2 * half + 1, &mut self.sums[axis]);
         }
         let count = |c: usize| {
             let columns = (c + half).min(width - 1) - c.saturating_sub(half) + 1;
@@ -165,24 +170,47 @@ fn flatten_inner(
     }
 }
 
-/// Sums of `length` values from each place on, by doubling: `values` is used up.
+/// Sum of a row's levels less `about`, and of their squares.
 #[multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
-fn run_sums(values: &mut [f32], length: usize, sums: &mut [f32]) {
+fn moments(row: &[f32], about: f32) -> [f64; 2] {
+    let (blocks, rest) = row.as_chunks::<LANES>();
+    let (mut sum, mut square) = ([0f32; LANES], [0f32; LANES]);
+    for block in blocks {
+        for l in 0..LANES {
+            let level = block[l] - about;
+            sum[l] += level;
+            square[l] += level * level;
+        }
+    }
+    for (l, level) in rest.iter().enumerate() {
+        let level = level - about;
+        sum[l] += level;
+        square[l] += level * level;
+    }
+    [sum, square].map(|lanes| lanes.iter().map(|x| f64::from(*x)).sum())
+}
+
+/// Sums of `length` values from each place on, by doubling; `runs` is used up, and holds the
+/// values at first.
+#[multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
+fn run_sums(runs: &mut Vec<f32>, longer: &mut Vec<f32>, length: usize, sums: &mut [f32]) {
     sums.fill(0.0);
-    // `values` holds sums of `run`; the bits of `length` say which runs make it up.
+    // `runs` holds sums of `run` values; the bits of `length` say which of them make it up.
     let (mut run, mut done) = (1, 0);
     while done < length {
         if length & run != 0 {
-            let end = values.len().saturating_sub(done);
-            for (sum, value) in sums[..end].iter_mut().zip(&values[done..]) {
-                *sum += value;
+            for (sum, more) in sums.iter_mut().zip(&runs[done.min(runs.len())..]) {
+                *sum += more;
             }
             done += run;
         }
-        let (here, n) = (values.len().saturating_sub(run), values.len());
-        for i in 0..here.min(n) {
-            values[i] += values[i + run];
+        let ahead = &runs[run.min(runs.len())..];
+        for ((longer, here), ahead) in longer.iter_mut().zip(runs.iter()).zip(ahead) {
+            *longer = here + ahead;
         }
+        let end = ahead.len();
+        longer[end..].copy_from_slice(&runs[end..]);
+        std::mem::swap(runs, longer);
         run *= 2;
     }
 }
