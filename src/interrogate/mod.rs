@@ -11,6 +11,7 @@
 
 mod deform;
 mod finish;
+mod flatten;
 mod hidden;
 mod judge;
 mod layout;
@@ -18,6 +19,7 @@ mod pass;
 mod peak;
 mod plan;
 mod plane;
+mod plane_sums;
 mod predictor;
 mod raw_plane;
 mod response;
@@ -27,6 +29,7 @@ mod smoothing;
 mod spline;
 mod statistics;
 mod taper;
+mod together;
 mod validate;
 
 pub use finish::blank_field;
@@ -34,3 +37,4 @@ pub use kolk_correlate as transform;
 pub use plan::{Plan, PlanError, PlanOptions, WindowSize};
 pub use plane::{CorrelationPlane, PlaneError, PlanePeak, correlation_plane};
 pub use run::{ALGORITHM, InterrogateError, interrogate, interrogate_images};
+pub use together::{TogetherError, correlate_together};

@@ -208,8 +208,8 @@ pub(crate) fn variance(lean: f32, top: f32, side: f32, pixels: usize) -> Option<
 
 /// Root of the mean variance over the cells up to `reach` (rows, columns) away that have one.
 ///
-/// One window holds too few particles to say its own variance well; half a window further on
-/// every side it is hardly another flow.
+/// One window holds too few particles to say its own variance well, and those within half a
+/// window share most of them; a little further on every side it is hardly another flow.
 pub(crate) fn pooled(
     variances: &Array2<Option<f64>>,
     (j, i): (usize, usize),
