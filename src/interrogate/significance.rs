@@ -101,6 +101,10 @@ fn sums(planes: &[f32], (width, height): (usize, usize), reach: (usize, usize)) 
 /// unrelated images of 0.06 particles a px² reach this, and all in related ones.
 const PROMINENT: (f32, f32) = (6.0, 1.3);
 
+/// Peaks that need no agreement when nearly all about them are as clear: a flow that turns within a
+/// window or two leads no line to expect anything.
+const CLEAR: (f32, f32) = (8.0, 2.0);
+
 /// Prominence that one line of neighbours in agreement makes up for.
 const FAIR: f32 = 5.0;
 
@@ -153,33 +157,54 @@ pub(crate) fn significant(
             _ => Support::Given,
         }
     });
+    let clear = Array2::from_shape_fn(good.dim(), |at| {
+        let finding = &findings[at];
+        let clear = finding.prominence >= CLEAR.0 && finding.ratio >= CLEAR.1;
+        good[at] && (support[at] == Support::Given || clear)
+    });
     Array2::from_shape_fn(good.dim(), |at| {
         let finding = &findings[at];
         let prominent = (finding.prominence >= PROMINENT.0 && finding.ratio >= PROMINENT.1)
             || finding.height >= HIGH;
         good[at]
-            && (support[at] == Support::Given || (prominent && in_company(&support, at, stride)))
+            && (support[at] == Support::Given
+                || (prominent && in_company(&support, at, stride))
+                || (clear[at] && nearly_all(&clear, at, stride)))
     })
 }
 
-/// True unless most of the independent windows about one are refused support.
-fn in_company(support: &Array2<Support>, (j, i): (usize, usize), stride: (usize, usize)) -> bool {
-    let (rows, columns) = support.dim();
-    let about = |at: usize, stride: usize, n: usize| {
+/// The up to nine places a stride apart about one, and itself.
+fn about(
+    (rows, columns): (usize, usize),
+    (j, i): (usize, usize),
+    stride: (usize, usize),
+) -> impl Iterator<Item = (usize, usize)> {
+    let along = |at: usize, stride: usize, n: usize| {
         let after = Some(at + stride).filter(|at| *at < n);
         [at.checked_sub(stride), Some(at), after]
             .into_iter()
             .flatten()
     };
+    along(j, stride.0, rows).flat_map(move |jj| along(i, stride.1, columns).map(move |ii| (jj, ii)))
+}
+
+/// True where seven in eight of the independent windows about one are clear.
+fn nearly_all(clear: &Array2<bool>, at: (usize, usize), stride: (usize, usize)) -> bool {
+    let others = about(clear.dim(), at, stride).filter(|other| *other != at);
+    let (all, yes) = others.fold((0, 0), |(all, yes), other| {
+        (all + 1, yes + usize::from(clear[other]))
+    });
+    8 * yes >= 7 * all
+}
+
+/// True unless most of the independent windows about one are refused support.
+fn in_company(support: &Array2<Support>, at: (usize, usize), stride: (usize, usize)) -> bool {
     let (mut given, mut refused) = (0, 0);
-    for jj in about(j, stride.0, rows) {
-        for ii in about(i, stride.1, columns) {
-            match support[(jj, ii)] {
-                _ if (jj, ii) == (j, i) => {}
-                Support::Given => given += 1,
-                Support::Refused => refused += 1,
-                Support::Silent => {}
-            }
+    for other in about(support.dim(), at, stride).filter(|other| *other != at) {
+        match support[other] {
+            Support::Given => given += 1,
+            Support::Refused => refused += 1,
+            Support::Silent => {}
         }
     }
     given >= refused
