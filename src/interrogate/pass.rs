@@ -29,12 +29,14 @@ pub(crate) struct Finding {
     /// Height of that peak as a correlation coefficient, -1 to 1.
     pub height: f32,
     /// How far that peak stands above the mean of the rest of the plane, in units of the rest's
-    /// scatter; 0 where it was not asked for.
+    /// scatter.
     pub prominence: f32,
-    /// Height of that peak over that of the next highest; 0 where it was not asked for.
+    /// Height of that peak over that of the next highest.
     pub ratio: f32,
     /// Share of the window that was lit in both exposures.
     pub lit: f32,
+    /// Variance of the grey levels as correlated, weighted, in the exposure that has less of it.
+    pub contrast: f32,
 }
 
 impl Finding {
@@ -45,6 +47,7 @@ impl Finding {
         prominence: 0.0,
         ratio: 0.0,
         lit: 0.0,
+        contrast: 0.0,
     };
 }
 
@@ -55,6 +58,8 @@ pub(crate) struct Pass<'a> {
     tapers: [Taper; 2],
     /// Weight of each pixel of a window, row after row.
     weights: Vec<f32>,
+    /// Their sum.
+    weight: f32,
     correlator: Correlator,
     search: Search,
     /// Whether each vector gets its uncertainty.
@@ -81,6 +86,7 @@ impl<'a> Pass<'a> {
             layout,
             correlator: Correlator::new(height, width)?.weighted(weights.clone())?,
             tapers,
+            weight: weights.iter().sum(),
             weights,
             search: Search {
                 reach_x: reach.0,
@@ -141,11 +147,9 @@ impl<'a> Pass<'a> {
             let leans = self
                 .statistics
                 .then(|| self.leans(&windows, &moments, &mut bench.statistics));
-            let background = self.statistics.then(|| {
-                let window = self.layout.window;
-                let reach = (self.search.reach_x, self.search.reach_y);
-                Background::of(&bench.planes, (window.width, window.height), reach)
-            });
+            let window = self.layout.window;
+            let reach = (self.search.reach_x, self.search.reach_y);
+            let background = Background::of(&bench.planes, (window.width, window.height), reach);
             let lit = if dark {
                 bench.lit_shares(batch, self.layout.window.height)
             } else {
@@ -158,15 +162,13 @@ impl<'a> Pass<'a> {
                     ..if norm > 0.0 {
                         let leans = leans.map(|axes| axes.map(|lanes| lanes[l]));
                         let mut found = self.read(&bench.planes, l, peaks.first[l], norm, leans);
-                        if let Some(background) = &background {
-                            let first = &peaks.first[l];
-                            let patch = self.correlator.neighbourhood(&bench.planes, l, first);
-                            let (mean, scatter) = background.without(l, &patch);
-                            let height = f64::from(first.height);
-                            found.prominence = ((height - mean) / scatter) as f32;
-                            found.ratio =
-                                first.height / peaks.second[l].height.max(f32::MIN_POSITIVE);
-                        }
+                        let first = &peaks.first[l];
+                        let patch = self.correlator.neighbourhood(&bench.planes, l, first);
+                        let (mean, scatter) = background.without(l, &patch);
+                        found.prominence = ((f64::from(first.height) - mean) / scatter) as f32;
+                        found.ratio = first.height / peaks.second[l].height.max(f32::MIN_POSITIVE);
+                        let energy = moments.first_energy[l].min(moments.second_energy[l]);
+                        found.contrast = energy / (lit[l] * self.weight);
                         found
                     } else {
                         Finding::NOTHING
@@ -225,6 +227,7 @@ impl<'a> Pass<'a> {
             prominence: 0.0,
             ratio: 0.0,
             lit: 1.0,
+            contrast: 0.0,
         }
     }
 }
