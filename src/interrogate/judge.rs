@@ -7,7 +7,7 @@ use super::pass::Finding;
 use super::plan::Plan;
 use super::predictor::Shifts;
 use super::run::Stage;
-use super::significance::significant;
+use super::significance::{least_contrast, significant};
 use super::validate::{MedianTest, fill};
 use crate::field::Status;
 
@@ -19,13 +19,15 @@ pub(super) struct Judged {
     pub status: Array2<Status>,
 }
 
-/// Adds residuals to the predictor, rejects what stands out, and fills the gaps.
+/// Adds residuals to the predictor, rejects what stands out or could be chance, and fills the gaps.
+///
+/// Chance peaks are rejected in every pass: in a place without particles those of one pass would
+/// bend the predictor of the next, and pull the vectors of its rim with it.
 pub(super) fn judge(
     findings: &Array2<Finding>,
     stage: &Stage,
     hidden: Option<&Array2<bool>>,
     plan: &Plan,
-    last: bool,
 ) -> Judged {
     let options = plan.options();
     let layout = &stage.layout;
@@ -45,7 +47,9 @@ pub(super) fn judge(
         shifts.y[at] += finding.shift.1;
     }
     let lit = findings.map(|f| f64::from(f.lit) >= options.least_lit);
-    let signal = findings.map(|f| f64::from(f.lit) >= options.least_lit && f.height > 0.0);
+    let least = least_contrast(findings, options.flatten_px > 0);
+    let signal = findings
+        .map(|f| f64::from(f.lit) >= options.least_lit && f.height > 0.0 && f.contrast >= least);
     let test = MedianTest {
         limit: options.median_limit,
         floor_px: options.median_floor_px,
@@ -58,9 +62,7 @@ pub(super) fn judge(
             signal[at] && test.fits(&shifts, &good, at, d)
         });
     }
-    if last {
-        good = significant(&shifts, findings, &good, layout);
-    }
+    good = significant(&shifts, findings, &good, layout);
     fill(&mut shifts, &good);
     let none = !good.iter().any(|good| *good);
     let status = Array2::from_shape_fn(layout.shape(), |at| {

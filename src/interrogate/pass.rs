@@ -30,12 +30,14 @@ pub(crate) struct Finding {
     /// Height of that peak as a correlation coefficient, -1 to 1.
     pub height: f32,
     /// How far that peak stands above the mean of the rest of the plane, in units of the rest's
-    /// scatter; 0 where it was not asked for.
+    /// scatter.
     pub prominence: f32,
-    /// Height of that peak over that of the next highest; 0 where it was not asked for.
+    /// Height of that peak over that of the next highest.
     pub ratio: f32,
     /// Share of the window that was lit in both exposures.
     pub lit: f32,
+    /// Variance of the grey levels as correlated, weighted, in the exposure that has less of it.
+    pub contrast: f32,
 }
 
 impl Finding {
@@ -46,6 +48,7 @@ impl Finding {
         prominence: 0.0,
         ratio: 0.0,
         lit: 0.0,
+        contrast: 0.0,
     };
 }
 
@@ -56,6 +59,8 @@ pub(crate) struct Pass<'a> {
     tapers: [Taper; 2],
     /// Weight of each pixel of a window, row after row.
     weights: Vec<f32>,
+    /// Their sum.
+    weight: f32,
     correlator: Correlator,
     search: Search,
     /// Whether each vector gets its uncertainty.
@@ -82,6 +87,7 @@ impl<'a> Pass<'a> {
             layout,
             correlator: Correlator::new(height, width)?.weighted(weights.clone())?,
             tapers,
+            weight: weights.iter().sum(),
             weights,
             search: Search {
                 reach_x: reach.0,
@@ -122,7 +128,8 @@ impl<'a> Pass<'a> {
                     for (l, window) in windows.iter_mut().enumerate() {
                         let norm = found.moments.normalization(l);
                         let leans = found.leans.map(|axes| axes.map(|lanes| lanes[l]));
-                        window.add(norm, leans, found.lit[l], |column, row| {
+                        let contrast = found.contrast(l, self.weight);
+                        window.add(norm, leans, (found.lit[l], contrast), |column, row| {
                             let at = Sample {
                                 column,
                                 row,
@@ -157,6 +164,7 @@ impl<'a> Pass<'a> {
                 prominence: peak.prominence,
                 ratio: peak.ratio,
                 lit: window.lit(),
+                contrast: window.contrast(),
                 ..self.read(peak.patch, peak.at, leans)
             }
         });
@@ -233,11 +241,9 @@ impl<'a> Pass<'a> {
             let peaks = self
                 .correlator
                 .peaks(&bench.planes, &self.search, &mut bench.scratch);
-            let background = self.statistics.then(|| {
-                let window = self.layout.window;
-                let reach = (self.search.reach_x, self.search.reach_y);
-                Background::of(&bench.planes, (window.width, window.height), reach)
-            });
+            let window = self.layout.window;
+            let reach = (self.search.reach_x, self.search.reach_y);
+            let background = Background::of(&bench.planes, (window.width, window.height), reach);
             for (l, out) in out.iter_mut().enumerate() {
                 let norm = found.moments.normalization(l);
                 let lit = found.lit[l];
@@ -251,16 +257,15 @@ impl<'a> Pass<'a> {
                 let (first, second) = (&peaks.first[l], &peaks.second[l]);
                 let patch = self.correlator.neighbourhood(&bench.planes, l, first);
                 let leans = found.leans.map(|axes| axes.map(|lanes| lanes[l]));
+                let (mean, scatter) = background.without(l, &patch);
                 *out = Finding {
                     height: first.height * norm,
+                    prominence: ((f64::from(first.height) - mean) / scatter) as f32,
+                    ratio: first.height / second.height.max(f32::MIN_POSITIVE),
                     lit,
+                    contrast: found.contrast(l, self.weight),
                     ..self.read(patch, (first.column, first.row), leans)
                 };
-                if let Some(background) = &background {
-                    let (mean, scatter) = background.without(l, &patch);
-                    out.prominence = ((f64::from(first.height) - mean) / scatter) as f32;
-                    out.ratio = first.height / second.height.max(f32::MIN_POSITIVE);
-                }
             }
         }
     }
@@ -318,6 +323,16 @@ struct Batch {
     moments: Moments,
     leans: Option<[Lanes; 2]>,
     lit: Lanes,
+}
+
+impl Batch {
+    /// Variance of the grey levels of a window whose weights add up to `weight`, in the exposure
+    /// that has less of it.
+    fn contrast(&self, lane: usize, weight: f32) -> f32 {
+        let moments = &self.moments;
+        let energy = moments.first_energy[lane].min(moments.second_energy[lane]);
+        energy / (self.lit[lane] * weight)
+    }
 }
 
 /// The workplace of one thread: the rows under the present windows, regrouped, and room for what

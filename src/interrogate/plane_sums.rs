@@ -20,8 +20,10 @@ pub(crate) struct WindowSum {
     leans: [f32; 2],
     /// Pairs in which the window had contrast.
     pairs: usize,
-    /// Sum of the lit shares, and of how many.
-    lit: (f32, usize),
+    /// Sums of the lit shares and of the contrasts, and of how many.
+    lit: f32,
+    contrast: f32,
+    added: usize,
 }
 
 /// The highest peak of a sum.
@@ -45,7 +47,9 @@ impl WindowSum {
             samples: vec![0.0; (2 * x + 5) * (2 * y + 5)],
             leans: [0.0; 2],
             pairs: 0,
-            lit: (0.0, 0),
+            lit: 0.0,
+            contrast: 0.0,
+            added: 0,
         }
     }
 
@@ -55,13 +59,15 @@ impl WindowSum {
         &mut self,
         norm: f32,
         leans: Option<[f32; 2]>,
-        lit: f32,
+        (lit, contrast): (f32, f32),
         sample: impl Fn(i32, i32) -> f32,
     ) {
-        self.lit = (self.lit.0 + lit, self.lit.1 + 1);
+        self.lit += lit;
+        self.added += 1;
         if norm == 0.0 {
             return;
         }
+        self.contrast += contrast;
         self.pairs += 1;
         let (x, y) = (self.reach.0 + 2, self.reach.1 + 2);
         let places = (-y..=y).flat_map(|down| (-x..=x).map(move |right| (right, down)));
@@ -78,6 +84,7 @@ impl WindowSum {
     /// Adds the samples of another window, whatever is lit there.
     fn add_samples(&mut self, other: &WindowSum) {
         self.pairs += other.pairs;
+        self.contrast += other.contrast;
         for (sum, more) in self.samples.iter_mut().zip(&other.samples) {
             *sum += more;
         }
@@ -95,7 +102,12 @@ impl WindowSum {
 
     /// Mean share that was lit.
     pub fn lit(&self) -> f32 {
-        self.lit.0 / self.lit.1.max(1) as f32
+        self.lit / self.added.max(1) as f32
+    }
+
+    /// Mean contrast of the pairs that had any.
+    pub fn contrast(&self) -> f32 {
+        self.contrast / self.pairs.max(1) as f32
     }
 
     /// A sum as the mean coefficient of the pairs that had contrast.

@@ -20,7 +20,7 @@ use crate::task::{Cancelled, Task};
 
 /// Number of the method: raised with every change that gives the same images and plan other
 /// numbers, so that fields on disk are not taken for what would now be computed.
-pub const ALGORITHM: u32 = 2;
+pub const ALGORITHM: u32 = 3;
 
 /// Why a pair could not be interrogated.
 #[derive(Debug, thiserror::Error)]
@@ -106,7 +106,7 @@ pub fn interrogate_images(
     let exposures = images.exposures(stage.predictor.as_ref());
     let findings = Pass::new(&stage.layout, stage.reach, true)?.run(&exposures, task)?;
     let hidden = in_either(masks);
-    let judged = judge(&findings, &stage, hidden.as_ref(), plan, true);
+    let judged = judge(&findings, &stage, hidden.as_ref(), plan);
     Ok(finish(
         (judged, findings),
         plan.error_model(),
@@ -186,7 +186,7 @@ pub(super) fn stages(
         };
         match correlate(&stage, pass + 1 == layouts.len())? {
             Some(findings) => {
-                let judged = judge(&findings, &stage, hidden, plan, false);
+                let judged = judge(&findings, &stage, hidden, plan);
                 known = Some((judged.shifts, *layout));
             }
             None => return Ok(stage),

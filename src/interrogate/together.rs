@@ -89,7 +89,7 @@ pub fn correlate_together(
         unreachable!("the passes end with the last stage")
     };
     let scale: Scale = first.scale();
-    let judged = judge(&findings, &stage, None, plan, true);
+    let judged = judge(&findings, &stage, None, plan);
     Ok(finish(
         (judged, findings),
         plan.error_model(),
