@@ -25,7 +25,6 @@ mod raw_plane;
 mod response;
 mod run;
 mod significance;
-mod smoothing;
 mod spline;
 mod statistics;
 mod taper;

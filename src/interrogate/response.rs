@@ -11,18 +11,17 @@ use std::sync::Arc;
 use ndarray::Array2;
 
 use super::layout::Layout;
-use super::smoothing::AlongAxis;
-use super::statistics::REACH;
+use super::predictor::smoothing_response;
+use super::statistics::{REACH, share_kept};
 use super::taper::Taper;
 use crate::field::ErrorCorrelation;
 
 /// Wave numbers along each axis from 0 to half a cycle a px, in steps.
 const STEPS: usize = 96;
 
-/// Area, px², over which the light of an even spread of particles equals that of one particle met
-/// at random, the brighter more often: mean of the squared energies of particle images over their
-/// squared mean, 1.6 in a Gaussian sheet, over 0.06 particles a px². Sparser particles clump
-/// more; the uncertainty is then some per cent too small.
+/// Area, px², over which an even spread of light equals that of one particle met at random, the
+/// brighter more often: 1.6, the mean of squared energies of particle images over their squared
+/// mean in a Gaussian sheet, over 0.06 particles a px².
 const CLUMP_PX2: f64 = 27.0;
 
 /// What becomes of a single window's error in the finished field.
@@ -93,8 +92,6 @@ impl Response {
 
     /// Ratio of the random error after all passes to that of the last window alone.
     pub fn gain(&self) -> f64 {
-        let flat = vec![1.0; STEPS];
-        let power = |t: &[f64]| sum(t, &flat, &flat);
         (power(&self.transfer) / power(&self.single)).sqrt()
     }
 
@@ -102,11 +99,13 @@ impl Response {
     /// that join pixels up to `reach` apart on each axis: the predictor has already followed,
     /// and so taken out, its longest waves.
     ///
-    /// What is taken out with a pixel's own noise is taken from all pixels joined with it, and by
-    /// as much as they shine. Light comes in particles: round a pixel that shines there is more
-    /// than in a square of that size anywhere, by what one particle is worth ([`CLUMP_PX2`]).
-    pub fn left_to_see(&self, reach: usize) -> f64 {
-        // The spectrum of such sums: a box of 2 reach + 1 px on each axis.
+    /// With P the predictor's transfer that is 1 - ∫ B (2 P - P²) over wave numbers, B the
+    /// spectrum of such a sum, were light spread evenly. It comes in particles: round a pixel
+    /// that shines there is more of it than anywhere else, by [`CLUMP_PX2`], both in the sum and
+    /// in what the predictor was made of. Sparser particles clump more than is assumed here, and
+    /// dense ones less, which changes the uncertainty by up to 5 %.
+    fn left_to_see(&self, reach: usize) -> f64 {
+        // A box of 2 reach + 1 px on each axis.
         let along = |k: f64| -> f64 {
             let turn = std::f64::consts::TAU * k;
             1.0 + 2.0 * (1..=reach).map(|m| (turn * m as f64).cos()).sum::<f64>()
@@ -117,15 +116,19 @@ impl Response {
             (0..STEPS).map(at).collect()
         };
         let (x, y) = (axis(self.limit.0), axis(self.limit.1));
-        let end = |k: usize| if k == 0 || k == STEPS - 1 { 0.5 } else { 1.0 };
-        let mut gone = 0.0;
-        for (j, y) in y.iter().enumerate() {
-            for (i, x) in x.iter().enumerate() {
-                let p = self.predicted[j * STEPS + i];
-                gone += end(i) * end(j) * (x * y + CLUMP_PX2) * (1.0 - (1.0 - p).powi(2));
-            }
-        }
-        (1.0 - gone * cell).max(0.1)
+        let flat = vec![1.0; STEPS];
+        let followed: Vec<f64> = self.predicted.iter().map(|p| p * (2.0 - p)).collect();
+        let clump = CLUMP_PX2 * cell * sum(&followed, &flat, &flat);
+        let gone = cell * sum(&followed, &x, &y) + clump;
+        (1.0 - gone / (1.0 + clump)).max(0.1)
+    }
+
+    /// The same share for the shift of a window's whole pattern.
+    fn left_to_window(&self) -> f64 {
+        let flat = vec![1.0; STEPS];
+        let seen = |(s, p): (&f64, &f64)| (s * (1.0 - p)).powi(2);
+        let left: Vec<f64> = self.single.iter().zip(&self.predicted).map(seen).collect();
+        sum(&left, &flat, &flat) / power(&self.single)
     }
 
     /// Correlation of the errors of two vectors (dx, dy) px apart.
@@ -134,9 +137,9 @@ impl Response {
             let turn = std::f64::consts::TAU * limit * d / (STEPS - 1) as f64;
             (0..STEPS).map(|k| (turn * k as f64).cos()).collect()
         };
-        let flat = vec![1.0; STEPS];
         let (x, y) = (along(self.limit.0, dx), along(self.limit.1, dy));
-        sum(&self.transfer, &x, &y) / sum(&self.transfer, &flat, &flat)
+        let squares: Vec<f64> = self.transfer.iter().map(|t| t * t).collect();
+        sum(&squares, &x, &y) / power(&self.transfer)
     }
 
     /// The model for vectors on `last`, the last layout; errors are taken to be independent where
@@ -150,8 +153,10 @@ impl Response {
         let correlation = Array2::from_shape_fn(shape, |(j, i)| {
             self.correlation((i * last.step_x) as f64, (j * last.step_y) as f64)
         });
+        let pixels = last.window.width * last.window.height;
+        let kept = share_kept(pixels, 1.0) / share_kept(pixels, self.left_to_window());
         ErrorModel {
-            gain: self.gain() / self.left_to_see(REACH).sqrt(),
+            gain: self.gain() * (kept / self.left_to_see(REACH)).sqrt(),
             correlation: Arc::new(ErrorCorrelation::new(correlation)),
         }
     }
@@ -168,15 +173,22 @@ impl Response {
     }
 }
 
-/// Trapezoidal sum over the lattice of the squared transfer times x(kx) y(ky).
-fn sum(transfer: &[f64], x: &[f64], y: &[f64]) -> f64 {
+/// Trapezoidal sum over the lattice of `values` times x(kx) y(ky).
+fn sum(values: &[f64], x: &[f64], y: &[f64]) -> f64 {
     let end = |k: usize| if k == 0 || k == STEPS - 1 { 0.5 } else { 1.0 };
     let mut sum = 0.0;
-    for (j, (row, y)) in transfer.chunks_exact(STEPS).zip(y).enumerate() {
+    for (j, (row, y)) in values.chunks_exact(STEPS).zip(y).enumerate() {
         let along = row.iter().zip(x).enumerate();
-        sum += end(j) * y * along.map(|(i, (t, x))| end(i) * t * t * x).sum::<f64>();
+        sum += end(j) * y * along.map(|(i, (v, x))| end(i) * v * x).sum::<f64>();
     }
     sum
+}
+
+/// Trapezoidal sum of the squares.
+fn power(transfer: &[f64]) -> f64 {
+    let squares: Vec<f64> = transfer.iter().map(|t| t * t).collect();
+    let flat = vec![1.0; STEPS];
+    sum(&squares, &flat, &flat)
 }
 
 fn outer(rows: &[f64], columns: &[f64]) -> Vec<f64> {
@@ -187,17 +199,22 @@ fn outer(rows: &[f64], columns: &[f64]) -> Vec<f64> {
 
 /// Response of the predictor's smoothing; nothing passes that the grid of windows cannot carry.
 fn smoothing(layout: &Layout, limit: (f64, f64)) -> Vec<f64> {
-    let along = |limit: f64, side: usize, step: usize| -> Vec<AlongAxis> {
+    let along = |limit: f64, side: usize, step: usize| {
         (0..STEPS)
-            .map(|k| limit * k as f64 / (STEPS - 1) as f64 * step as f64)
-            .map(|cycles| AlongAxis::new(side, step, cycles))
-            .collect()
+            .map(|k| {
+                let cycles = limit * k as f64 / (STEPS - 1) as f64 * step as f64;
+                if cycles > 0.5 {
+                    0.0
+                } else {
+                    smoothing_response(side, step, cycles)
+                }
+            })
+            .collect::<Vec<_>>()
     };
-    let x = along(limit.0, layout.window.width, layout.step_x);
-    let y = along(limit.1, layout.window.height, layout.step_y);
-    y.iter()
-        .flat_map(|y| x.iter().map(move |x| x.across(y)))
-        .collect()
+    outer(
+        &along(limit.1, layout.window.height, layout.step_y),
+        &along(limit.0, layout.window.width, layout.step_x),
+    )
 }
 
 #[cfg(test)]

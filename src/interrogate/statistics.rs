@@ -193,17 +193,24 @@ fn spread<const DOWN: usize, const RIGHT: usize>(
 /// average `side`, when their difference has the variance `lean`; `None` where there is no peak
 /// to speak of.
 ///
-/// `pixels` is how many contributions were summed: taking their mean out took the share
-/// (2 [`REACH`] + 1)² / `pixels` of the variance with it, which is given back. An estimate can
-/// come out below zero by chance; only a mean of several is an uncertainty ([`pooled`]).
+/// `pixels` is how many contributions were summed: taking their mean out took a share of the
+/// variance with it, which is given back ([`share_kept`]). An estimate can come out below zero by
+/// chance; only a mean of several is an uncertainty ([`pooled`]).
 pub(crate) fn variance(lean: f32, top: f32, side: f32, pixels: usize) -> Option<f64> {
     if !(lean.is_finite() && side > 0.0 && top > side) {
         return None;
     }
     let (lean, top, side) = (f64::from(lean), f64::from(top), f64::from(side));
-    let box_area = ((2 * REACH + 1) * (2 * REACH + 1)) as f64;
-    let kept = (1.0 - box_area / pixels as f64).max(0.25);
+    let kept = share_kept(pixels, 1.0);
     Some(lean / kept / (4.0 * side * (top / side).ln()).powi(2))
+}
+
+/// Share of the variance of a sum of `pixels` contributions that is left when their mean is taken
+/// out: all but (2 [`REACH`] + 1)² / `pixels`, times how much of the variance of that mean there
+/// was, `of_mean`, as the passes before may have taken it out already.
+pub(crate) fn share_kept(pixels: usize, of_mean: f64) -> f64 {
+    let box_area = ((2 * REACH + 1) * (2 * REACH + 1)) as f64;
+    (1.0 - of_mean * box_area / pixels as f64).max(0.25)
 }
 
 /// Root of the mean variance over the cells up to `reach` (rows, columns) away that have one.
