@@ -348,7 +348,8 @@ fn beside_a_body_that_moves_between_the_exposures_vectors_are_those_of_the_flow(
     println!("hidden where it is in the first {still:.4}, not hidden {bare:.4}");
     // Half of the pixels: the root of 2 in random error.
     assert!(each < 1.5 * clean && by_level < 1.5 * clean);
-    assert!(still > 5.0 * each && bare > 5.0 * each);
+    // Without the right mask it is another matter, or the test would show nothing.
+    assert!(still > 4.0 * each && bare > 4.0 * each);
 }
 
 #[test]

@@ -127,7 +127,12 @@ fn the_plane_is_the_defining_sum_of_the_weighted_windows() {
     let pair = pair(&flow, &images(), Scale::default());
     let (first, second) = pair.load().unwrap();
     let (width, height) = (24, 16);
-    let found = plane(&pair, (59.0, 131.0), &plan(&[[width, height]], 0.5));
+    // On the images as they are.
+    let plan = Plan::new(&PlanOptions {
+        flatten_px: 0,
+        ..plan(&[[width, height]], 0.5).options().clone()
+    });
+    let found = plane(&pair, (59.0, 131.0), &plan.unwrap());
     // Weight of a pixel of one exposure: root of 1 - t² along each axis, t in half sides.
     let root = |k: usize, n: usize| {
         let t = (2.0 * k as f64 - n as f64 + 1.0) / n as f64;

@@ -40,8 +40,8 @@ pub(super) fn finish(
     };
     let gain = model.gain;
     let around = (
-        layout.window.height / 2 / layout.step_y,
-        layout.window.width / 2 / layout.step_x,
+        3 * layout.window.height / 4 / layout.step_y,
+        3 * layout.window.width / 4 / layout.step_x,
     );
     let doubt = |axis: fn(&Finding) -> Option<f64>| {
         let variances = Array2::from_shape_fn(findings.dim(), |at| {

@@ -53,13 +53,10 @@ pub(super) fn judge(
     let mut good = signal.clone();
     // The second round judges among what the first one left.
     for _ in 0..2 {
-        let before = good.clone();
-        for (at, candidate) in signal.indexed_iter() {
-            if *candidate {
-                let d = (shifts.x[at], shifts.y[at]);
-                good[at] = test.fits(&shifts, &before, at, d);
-            }
-        }
+        good = layout.cells(|at| {
+            let d = (shifts.x[at], shifts.y[at]);
+            signal[at] && test.fits(&shifts, &good, at, d)
+        });
     }
     if last {
         good = significant(&shifts, findings, &good, layout);

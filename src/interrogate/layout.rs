@@ -1,5 +1,8 @@
 //! Where the windows of a pass lie.
 
+use ndarray::Array2;
+use rayon::prelude::*;
+
 use super::plan::WindowSize;
 
 /// A regular arrangement of windows, each wholly inside the image.
@@ -56,6 +59,18 @@ impl Layout {
     /// Row of the centre of the first window.
     pub fn first_y(&self) -> f64 {
         self.top as f64 + (self.window.height as f64 - 1.0) / 2.0
+    }
+
+    /// One value for each window (row, column); over all cores.
+    pub fn cells<T: Send>(&self, of: impl Fn((usize, usize)) -> T + Sync) -> Array2<T> {
+        let (rows, columns) = self.shape();
+        let values: Vec<T> = (0..rows * columns)
+            .into_par_iter()
+            .with_min_len(columns)
+            .map(|k| of((k / columns, k % columns)))
+            .collect();
+        let shaped = Array2::from_shape_vec((rows, columns), values);
+        shaped.unwrap_or_else(|_| unreachable!("one value a window"))
     }
 
     /// Shape of the arrays that hold one value a window.

@@ -11,6 +11,7 @@
 
 mod deform;
 mod finish;
+mod flatten;
 mod hidden;
 mod judge;
 mod layout;
@@ -18,14 +19,17 @@ mod pass;
 mod peak;
 mod plan;
 mod plane;
+mod plane_sums;
 mod predictor;
 mod raw_plane;
 mod response;
 mod run;
 mod significance;
+mod smoothing;
 mod spline;
 mod statistics;
 mod taper;
+mod together;
 mod validate;
 
 pub use finish::blank_field;
@@ -33,3 +37,4 @@ pub use kolk_correlate as transform;
 pub use plan::{Plan, PlanError, PlanOptions, WindowSize};
 pub use plane::{CorrelationPlane, PlaneError, PlanePeak, correlation_plane};
 pub use run::{ALGORITHM, InterrogateError, interrogate, interrogate_images};
+pub use together::{TogetherError, correlate_together};

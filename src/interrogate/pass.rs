@@ -8,6 +8,7 @@ use rayon::prelude::*;
 use super::deform::{Exposures, Row};
 use super::layout::Layout;
 use super::peak::{Patch, Peak};
+use super::plane_sums::PlaneSums;
 use super::significance::Background;
 use super::statistics::{StatisticsScratch, lean_variance, variance};
 use super::taper::Taper;
@@ -95,83 +96,171 @@ impl<'a> Pass<'a> {
     pub fn run(&self, images: &Exposures, task: &Task) -> Result<Array2<Finding>, Cancelled> {
         let (rows, columns) = self.layout.shape();
         let mut out = vec![Finding::NOTHING; rows * columns];
+        self.each_row(images, task, &mut out, columns, |bench, out| {
+            self.read_row(bench, out)
+        })?;
+        let shaped = Array2::from_shape_vec(self.layout.shape(), out);
+        Ok(shaped.unwrap_or_else(|_| unreachable!("one finding a window")))
+    }
+
+    /// Correlates every window and adds its plane to those of the pairs before.
+    pub fn add(
+        &self,
+        images: &Exposures,
+        sums: &mut PlaneSums,
+        task: &Task,
+    ) -> Result<(), Cancelled> {
+        let columns = self.layout.columns;
+        self.each_row(
+            images,
+            task,
+            sums.windows_mut(),
+            columns,
+            |bench, windows| {
+                for (batch, windows) in windows.chunks_mut(LANES).enumerate() {
+                    let found = self.correlate(bench, batch);
+                    for (l, window) in windows.iter_mut().enumerate() {
+                        let norm = found.moments.normalization(l);
+                        let leans = found.leans.map(|axes| axes.map(|lanes| lanes[l]));
+                        window.add(norm, leans, found.lit[l], |column, row| {
+                            let at = Sample {
+                                column,
+                                row,
+                                height: 0.0,
+                            };
+                            self.correlator.neighbourhood::<1>(&bench.planes, l, &at)[0][0]
+                        });
+                    }
+                }
+            },
+        )
+    }
+
+    /// Room for the sums of many pairs.
+    pub fn sums(&self) -> PlaneSums {
+        let reach = (self.search.reach_x, self.search.reach_y);
+        PlaneSums::new(self.layout.shape(), reach)
+    }
+
+    /// What the planes of many pairs say together.
+    pub fn read_sums(&self, sums: &PlaneSums) -> Array2<Finding> {
+        let findings = sums.windows().iter().map(|window| {
+            let Some(peak) = window.peak() else {
+                return Finding {
+                    lit: window.lit(),
+                    ..Finding::NOTHING
+                };
+            };
+            let leans = self.statistics.then(|| window.leans());
+            Finding {
+                height: window.mean(peak.height),
+                prominence: peak.prominence,
+                ratio: peak.ratio,
+                lit: window.lit(),
+                ..self.read(peak.patch, peak.at, leans)
+            }
+        });
+        let shaped = Array2::from_shape_vec(self.layout.shape(), findings.collect());
+        shaped.unwrap_or_else(|_| unreachable!("one finding a window"))
+    }
+
+    /// Goes through the rows of windows, `columns` places of `out` for each, with the bench's band
+    /// over them.
+    fn each_row<T: Send>(
+        &self,
+        images: &Exposures,
+        task: &Task,
+        out: &mut [T],
+        columns: usize,
+        row: impl Fn(&mut Bench, &mut [T]) + Sync,
+    ) -> Result<(), Cancelled> {
         // Each stretch makes the rows under its first windows anew, so it should be long; none of
         // them is made differently for it.
         let threads = rayon::current_num_threads();
         let stretch = match threads {
-            1 => rows,
-            threads => rows.div_ceil(2 * threads),
+            1 => self.layout.rows,
+            threads => self.layout.rows.div_ceil(2 * threads),
         };
         out.par_chunks_mut(columns * stretch)
             .enumerate()
             .map_init(
                 || Bench::new(self, images.width),
                 |bench, (number, chunk)| {
-                    for (k, row) in chunk.chunks_mut(columns).enumerate() {
+                    for (k, out) in chunk.chunks_mut(columns).enumerate() {
                         task.check()?;
                         bench.advance(self, images, number * stretch + k, k == 0);
-                        self.row(bench, row);
+                        row(bench, out);
                     }
                     Ok(())
                 },
             )
-            .collect::<Result<(), Cancelled>>()?;
-        let shaped = Array2::from_shape_vec(self.layout.shape(), out);
-        Ok(shaped.unwrap_or_else(|_| unreachable!("one finding a window")))
+            .collect()
     }
 
-    /// Correlates the row of windows over the bench's band.
-    fn row(&self, bench: &mut Bench, out: &mut [Finding]) {
+    /// Correlates one batch of the row of windows over the bench's band: the planes are left there.
+    fn correlate(&self, bench: &mut Bench, batch: usize) -> Batch {
+        let dark = bench.is_dark(batch);
+        let windows = Windows {
+            first: bench.first.pixels(),
+            second: bench.second.pixels(),
+            lit: dark.then(|| bench.lit.pixels()),
+            start: bench.first.start(0, batch),
+            layout: &bench.pixels,
+        };
+        let reach = self.search.reach_y + 2;
+        let moments =
+            self.correlator
+                .correlate(&windows, reach, &mut bench.planes, &mut bench.scratch);
+        let leans = self
+            .statistics
+            .then(|| self.leans(&windows, &moments, &mut bench.statistics));
+        let lit = if dark {
+            bench.lit_shares(batch, self.layout.window.height)
+        } else {
+            [1.0; LANES]
+        };
+        Batch {
+            moments,
+            leans,
+            lit,
+        }
+    }
+
+    /// Correlates the row of windows over the bench's band and reads their peaks.
+    fn read_row(&self, bench: &mut Bench, out: &mut [Finding]) {
         for (batch, out) in out.chunks_mut(LANES).enumerate() {
-            let dark = bench.is_dark(batch);
-            let windows = Windows {
-                first: bench.first.pixels(),
-                second: bench.second.pixels(),
-                lit: dark.then(|| bench.lit.pixels()),
-                start: bench.first.start(0, batch),
-                layout: &bench.pixels,
-            };
-            let reach = self.search.reach_y + 2;
-            let moments =
-                self.correlator
-                    .correlate(&windows, reach, &mut bench.planes, &mut bench.scratch);
+            let found = self.correlate(bench, batch);
             let peaks = self
                 .correlator
                 .peaks(&bench.planes, &self.search, &mut bench.scratch);
-            let leans = self
-                .statistics
-                .then(|| self.leans(&windows, &moments, &mut bench.statistics));
             let background = self.statistics.then(|| {
                 let window = self.layout.window;
                 let reach = (self.search.reach_x, self.search.reach_y);
                 Background::of(&bench.planes, (window.width, window.height), reach)
             });
-            let lit = if dark {
-                bench.lit_shares(batch, self.layout.window.height)
-            } else {
-                [1.0; LANES]
-            };
             for (l, out) in out.iter_mut().enumerate() {
-                let norm = moments.normalization(l);
+                let norm = found.moments.normalization(l);
+                let lit = found.lit[l];
+                if norm == 0.0 {
+                    *out = Finding {
+                        lit,
+                        ..Finding::NOTHING
+                    };
+                    continue;
+                }
+                let (first, second) = (&peaks.first[l], &peaks.second[l]);
+                let patch = self.correlator.neighbourhood(&bench.planes, l, first);
+                let leans = found.leans.map(|axes| axes.map(|lanes| lanes[l]));
                 *out = Finding {
-                    lit: lit[l],
-                    ..if norm > 0.0 {
-                        let leans = leans.map(|axes| axes.map(|lanes| lanes[l]));
-                        let mut found = self.read(&bench.planes, l, peaks.first[l], norm, leans);
-                        if let Some(background) = &background {
-                            let first = &peaks.first[l];
-                            let patch = self.correlator.neighbourhood(&bench.planes, l, first);
-                            let (mean, scatter) = background.without(l, &patch);
-                            let height = f64::from(first.height);
-                            found.prominence = ((height - mean) / scatter) as f32;
-                            found.ratio =
-                                first.height / peaks.second[l].height.max(f32::MIN_POSITIVE);
-                        }
-                        found
-                    } else {
-                        Finding::NOTHING
-                    }
+                    height: first.height * norm,
+                    lit,
+                    ..self.read(patch, (first.column, first.row), leans)
                 };
+                if let Some(background) = &background {
+                    let (mean, scatter) = background.without(l, &patch);
+                    out.prominence = ((f64::from(first.height) - mean) / scatter) as f32;
+                    out.ratio = first.height / second.height.max(f32::MIN_POSITIVE);
+                }
             }
         }
     }
@@ -189,21 +278,19 @@ impl<'a> Pass<'a> {
         lean_variance(&room.first, &room.second, width, &mut room.sums)
     }
 
-    /// Reads the highest peak of one plane.
+    /// Reads the peak whose highest sample is at an offset (right, down), from the samples round
+    /// it.
     fn read(
         &self,
-        planes: &Planes,
-        lane: usize,
-        first: Sample,
-        norm: f32,
+        mut patch: Patch,
+        (right, down): (i32, i32),
         leans: Option<[f32; 2]>,
     ) -> Finding {
-        let [across, down] = &self.tapers;
-        let mut patch: Patch = self.correlator.neighbourhood(planes, lane, &first);
+        let [across, along] = &self.tapers;
         for (r, row) in patch.iter_mut().enumerate() {
             for (c, value) in row.iter_mut().enumerate() {
-                let (x, y) = (first.column + c as i32 - 2, first.row + r as i32 - 2);
-                *value /= across.left(x) * down.left(y);
+                let (x, y) = (right + c as i32 - 2, down + r as i32 - 2);
+                *value /= across.left(x) * along.left(y);
             }
         }
         let peak = Peak::of(&patch);
@@ -217,16 +304,20 @@ impl<'a> Pass<'a> {
         };
         Finding {
             shift: (
-                f64::from(first.column) + peak.offset.0,
-                f64::from(first.row) + peak.offset.1,
+                f64::from(right) + peak.offset.0,
+                f64::from(down) + peak.offset.1,
             ),
             variance,
-            height: first.height * norm,
-            prominence: 0.0,
-            ratio: 0.0,
-            lit: 1.0,
+            ..Finding::NOTHING
         }
     }
+}
+
+/// What the correlation of a batch gives besides the planes, by lane.
+struct Batch {
+    moments: Moments,
+    leans: Option<[Lanes; 2]>,
+    lit: Lanes,
 }
 
 /// The workplace of one thread: the rows under the present windows, regrouped, and room for what

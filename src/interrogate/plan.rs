@@ -51,6 +51,12 @@ pub struct PlanOptions {
     pub median_floor_px: f64,
     /// Share of a window that must be inside the image and outside masks, 0.1 to 1.
     pub least_lit: f64,
+    /// Side of the square, px, over which the lighting is made even before anything else: local
+    /// mean and contrast are taken out. 0 leaves the images as they are; otherwise 9 to 255.
+    pub flatten_px: usize,
+    /// Whether in every pass but the last the correlation plane of a window is averaged with those
+    /// of the windows about half a window away: for thin seeding.
+    pub join_neighbours: bool,
 }
 
 impl Default for PlanOptions {
@@ -65,6 +71,8 @@ impl Default for PlanOptions {
             median_limit: 2.0,
             median_floor_px: 0.1,
             least_lit: 0.5,
+            flatten_px: 25,
+            join_neighbours: false,
         }
     }
 }
@@ -144,6 +152,13 @@ impl Plan {
         let floor = options.median_floor_px;
         within("median_floor_px", floor, 0.001, 100.0, "0.001 to 100 px")?;
         within("least_lit", options.least_lit, 0.1, 1.0, "0.1 to 1")?;
+        if options.flatten_px != 0 && !(9..=255).contains(&options.flatten_px) {
+            return Err(PlanError::Range {
+                name: "flatten_px",
+                value: options.flatten_px as f64,
+                range: "0, or 9 to 255 px",
+            });
+        }
         // The layouts' steps matter, the size of the image does not: any that holds a window does.
         let layouts: Vec<Layout> = options
             .windows_px

@@ -165,7 +165,7 @@ pub fn correlation_plane(
         .hidden(&first, &second)
         .map_err(InterrogateError::from)?;
     let masks = [hidden[0].as_ref(), hidden[1].as_ref()];
-    let mut images = Images::new([&first.pixels, &second.pixels], masks, pair.label())?;
+    let mut images = Images::new([&first.pixels, &second.pixels], masks, plan, pair.label())?;
     let view = before_last_pass(&mut images, plan, pair.label(), task)?;
     let window = nearest(&view.layout, column, row);
     let exposures = images.exposures(view.predictor.as_ref());

@@ -3,7 +3,7 @@
 use std::ops::Range;
 
 use multiversion::multiversion;
-use ndarray::{Array2, ArrayViewMut1, Axis};
+use ndarray::{Array2, ArrayViewMut1};
 
 use super::layout::Layout;
 
@@ -24,81 +24,6 @@ impl Shifts {
             y: Array2::zeros(shape),
         }
     }
-
-    /// The shifts with what the next window cannot hold stable removed.
-    ///
-    /// A window answers the shortest waves with the wrong sign (an even one of side W with
-    /// sinc(W/λ), negative for λ between W/2 and W; a tapered one less, and only for shorter
-    /// waves): fed back through the predictor they would grow. Each axis is therefore smoothed by the least-squares parabola over about 1.25 W (Savitzky & Golay
-    /// 1964), which leaves waves longer than 1.5 W nearly whole. Towards an edge the stretch
-    /// shrinks evenly, so that a straight profile stays straight.
-    pub fn smoothed(&self, layout: &Layout) -> Self {
-        let (rx, ry) = (
-            reach(layout.window.width, layout.step_x),
-            reach(layout.window.height, layout.step_y),
-        );
-        let smooth = |values: &Array2<f64>| {
-            let mut out = values.clone();
-            for line in out.lanes_mut(Axis(1)) {
-                smooth_line(line, rx);
-            }
-            for line in out.lanes_mut(Axis(0)) {
-                smooth_line(line, ry);
-            }
-            out
-        };
-        Self {
-            x: smooth(&self.x),
-            y: smooth(&self.y),
-        }
-    }
-}
-
-/// What [`Shifts::smoothed`] leaves of a wave of `cycles` per window step along one axis.
-pub(crate) fn smoothing_response(side: usize, step: usize, cycles: f64) -> f64 {
-    let turn = std::f64::consts::TAU * cycles;
-    match reach(side, step) {
-        0 => 1.0,
-        1 => (14.0 + 2.0 * turn.cos()) / 16.0,
-        m => parabola_weights(m)
-            .enumerate()
-            .map(|(k, w)| w * (turn * (k as f64 - m as f64)).cos())
-            .sum(),
-    }
-}
-
-/// Windows on either side that the smoothing of the predictor takes in.
-fn reach(side: usize, step: usize) -> usize {
-    (5 * side) / (8 * step)
-}
-
-fn smooth_line(mut line: ArrayViewMut1<f64>, reach: usize) {
-    let n = line.len();
-    let old: Vec<f64> = line.to_vec();
-    for (i, value) in line.iter_mut().enumerate() {
-        let m = reach.min(i).min(n - 1 - i);
-        *value = match m {
-            0 => old[i],
-            // Three points fix a parabola; a light pull to their mean still damps the shortest
-            // wave the grid carries.
-            1 => (old[i - 1] + 14.0 * old[i] + old[i + 1]) / 16.0,
-            m => parabola_weights(m)
-                .zip(&old[i - m..=i + m])
-                .map(|(w, v)| w * v)
-                .sum(),
-        };
-    }
-}
-
-/// Weights that give the middle of the least-squares parabola through 2m + 1 even points.
-fn parabola_weights(m: usize) -> impl Iterator<Item = f64> {
-    let m = m as f64;
-    let norm = (2.0 * m - 1.0) * (2.0 * m + 1.0) * (2.0 * m + 3.0) / 3.0;
-    let count = 2 * m as usize + 1;
-    (0..count).map(move |k| {
-        let i = k as f64 - m;
-        (3.0 * m * m + 3.0 * m - 1.0 - 5.0 * i * i) / norm
-    })
 }
 
 /// Shifts between the windows: a natural cubic spline through them along each axis, continued
@@ -375,26 +300,6 @@ mod tests {
                 let (dx, dy) = predictor.at(x, y);
                 assert!((dx - shifts.x[(j, i)]).abs() < 1e-5);
                 assert!((dy - shifts.y[(j, i)]).abs() < 1e-5);
-            }
-        }
-    }
-
-    #[test]
-    fn smoothing_keeps_every_unstable_wave_from_growing() {
-        // |F (1 - S)| < 1 for all waves the grid carries, F measured on a long line, S that of an
-        // even window: the worst case, since a tapered one is never further below zero.
-        for (side, step) in [(32, 8), (32, 16), (32, 4), (24, 6), (64, 16)] {
-            let reach = (5 * side) / (8 * step);
-            for k in 1..=100 {
-                let per_node = std::f64::consts::PI * k as f64 / 100.0;
-                let n = 101;
-                let mut line =
-                    ndarray::Array1::from_shape_fn(n, |i| (per_node * (i as f64 - 50.0)).cos());
-                smooth_line(line.view_mut(), reach);
-                let f = line[50];
-                let phase = per_node * side as f64 / step as f64 / 2.0;
-                let s = phase.sin() / phase;
-                assert!((f * (1.0 - s)).abs() < 1.0, "{side}/{step} at {per_node}");
             }
         }
     }

@@ -6,6 +6,7 @@ use ndarray::Array2;
 
 use super::deform::{Exposures, Masks};
 use super::finish::finish;
+use super::flatten::flattened;
 use super::hidden::{evened, in_either};
 use super::judge::judge;
 use super::layout::Layout;
@@ -100,7 +101,7 @@ pub fn interrogate_images(
     label: &str,
     task: &Task,
 ) -> Result<VectorField, InterrogateError> {
-    let mut images = Images::new([first, second], masks, label)?;
+    let mut images = Images::new([first, second], masks, plan, label)?;
     let stage = before_last_pass(&mut images, plan, label, task)?;
     let exposures = images.exposures(stage.predictor.as_ref());
     let findings = Pass::new(&stage.layout, stage.reach, true)?.run(&exposures, task)?;
@@ -141,8 +142,13 @@ pub(super) fn before_last_pass(
                 return Ok(None);
             }
             let exposures = images.exposures(stage.predictor.as_ref());
-            let findings = Pass::new(&stage.layout, stage.reach, false)?.run(&exposures, task)?;
-            Ok(Some(findings))
+            let pass = Pass::new(&stage.layout, stage.reach, false)?;
+            if !plan.options().join_neighbours {
+                return Ok(Some(pass.run(&exposures, task)?));
+            }
+            let mut sums = pass.sums();
+            pass.add(&exposures, &mut sums, task)?;
+            Ok(Some(pass.read_sums(&sums.joined(&stage.layout))))
         },
     )
 }
@@ -204,6 +210,7 @@ impl<'a> Images<'a> {
     pub fn new(
         images: [&'a Array2<f32>; 2],
         masks: Masks<'a>,
+        plan: &Plan,
         label: &str,
     ) -> Result<Self, InterrogateError> {
         let size = |(h, w): (usize, usize)| format!("{w} x {h}");
@@ -222,8 +229,13 @@ impl<'a> Images<'a> {
                 image: size(first.dim()),
             });
         }
+        let plain = [evened(first, masks[0]), evened(second, masks[1])];
+        let plain = match plan.options().flatten_px {
+            0 => plain,
+            side => plain.map(|image| Cow::Owned(flattened(&image, side))),
+        };
         Ok(Self {
-            plain: [evened(first, masks[0]), evened(second, masks[1])],
+            plain,
             masks,
             splines: None,
         })

@@ -10,6 +10,7 @@ use ndarray::Array2;
 
 use super::layout::Layout;
 use super::pass::Finding;
+use super::peak::Patch;
 use super::predictor::Shifts;
 use super::validate::along_lines;
 use multiversion::multiversion;
@@ -31,14 +32,44 @@ impl Background {
     }
 
     /// Mean, and scatter about it, of the plane in one lane without the samples of `peak`.
-    pub fn without(&self, lane: usize, peak: &[[f32; 5]; 5]) -> (f64, f64) {
-        let taken = peak.as_flattened();
-        let n = (self.samples as f64 - taken.len() as f64).max(1.0);
-        let of = |whole: f32, part: &dyn Fn(f64) -> f64| {
-            f64::from(whole) - taken.iter().map(|r| part(f64::from(*r))).sum::<f64>()
+    pub fn without(&self, lane: usize, peak: &Patch) -> (f64, f64) {
+        let scatter = Scatter {
+            sum: f64::from(self.sum[lane]),
+            squares: f64::from(self.squares[lane]),
+            samples: self.samples,
         };
-        let mean = of(self.sum[lane], &|r| r) / n;
-        let square = of(self.squares[lane], &|r| r * r) / n;
+        scatter.without(peak)
+    }
+}
+
+/// Sums over the searched part of one plane.
+pub(crate) struct Scatter {
+    sum: f64,
+    squares: f64,
+    samples: usize,
+}
+
+impl Scatter {
+    /// Over these samples.
+    pub fn of(samples: impl Iterator<Item = f32>) -> Self {
+        let none = Self {
+            sum: 0.0,
+            squares: 0.0,
+            samples: 0,
+        };
+        samples.map(f64::from).fold(none, |s, r| Self {
+            sum: s.sum + r,
+            squares: s.squares + r * r,
+            samples: s.samples + 1,
+        })
+    }
+
+    /// Mean, and scatter about it, without the samples of `peak`.
+    pub fn without(&self, peak: &Patch) -> (f64, f64) {
+        let taken = || peak.as_flattened().iter().map(|r| f64::from(*r));
+        let n = (self.samples as f64 - 25.0).max(1.0);
+        let mean = (self.sum - taken().sum::<f64>()) / n;
+        let square = (self.squares - taken().map(|r| r * r).sum::<f64>()) / n;
         (mean, (square - mean * mean).max(0.0).sqrt())
     }
 }
@@ -70,8 +101,16 @@ fn sums(planes: &[f32], (width, height): (usize, usize), reach: (usize, usize)) 
 /// unrelated images of 0.06 particles a px² reach this, and all in related ones.
 const PROMINENT: (f32, f32) = (6.0, 1.3);
 
+/// Peaks that need no agreement when nearly all about them are as clear: a flow that turns within a
+/// window or two leads no line to expect anything.
+const CLEAR: (f32, f32) = (8.0, 2.0);
+
 /// Prominence that one line of neighbours in agreement makes up for.
 const FAIR: f32 = 5.0;
+
+/// Correlation coefficient that counts as prominent: a texture coarser than particle images has
+/// peaks so broad that nothing in the plane is away from them.
+const HIGH: f32 = 0.7;
 
 /// What the windows that share no pixel with one say of it.
 #[derive(Clone, Copy, PartialEq)]
@@ -114,36 +153,58 @@ pub(crate) fn significant(
         match agreeing {
             0 if n == 0 => Support::Silent,
             0 => Support::Refused,
-            1 if findings[at].prominence < FAIR => Support::Refused,
+            1 if findings[at].prominence < FAIR && findings[at].height < HIGH => Support::Refused,
             _ => Support::Given,
         }
     });
+    let clear = Array2::from_shape_fn(good.dim(), |at| {
+        let finding = &findings[at];
+        let clear = finding.prominence >= CLEAR.0 && finding.ratio >= CLEAR.1;
+        good[at] && (support[at] == Support::Given || clear)
+    });
     Array2::from_shape_fn(good.dim(), |at| {
         let finding = &findings[at];
-        let prominent = finding.prominence >= PROMINENT.0 && finding.ratio >= PROMINENT.1;
+        let prominent = (finding.prominence >= PROMINENT.0 && finding.ratio >= PROMINENT.1)
+            || finding.height >= HIGH;
         good[at]
-            && (support[at] == Support::Given || (prominent && in_company(&support, at, stride)))
+            && (support[at] == Support::Given
+                || (prominent && in_company(&support, at, stride))
+                || (clear[at] && nearly_all(&clear, at, stride)))
     })
 }
 
-/// True unless most of the independent windows about one are refused support.
-fn in_company(support: &Array2<Support>, (j, i): (usize, usize), stride: (usize, usize)) -> bool {
-    let (rows, columns) = support.dim();
-    let about = |at: usize, stride: usize, n: usize| {
+/// The up to nine places a stride apart about one, and itself.
+fn about(
+    (rows, columns): (usize, usize),
+    (j, i): (usize, usize),
+    stride: (usize, usize),
+) -> impl Iterator<Item = (usize, usize)> {
+    let along = |at: usize, stride: usize, n: usize| {
         let after = Some(at + stride).filter(|at| *at < n);
         [at.checked_sub(stride), Some(at), after]
             .into_iter()
             .flatten()
     };
+    along(j, stride.0, rows).flat_map(move |jj| along(i, stride.1, columns).map(move |ii| (jj, ii)))
+}
+
+/// True where seven in eight of the independent windows about one are clear.
+fn nearly_all(clear: &Array2<bool>, at: (usize, usize), stride: (usize, usize)) -> bool {
+    let others = about(clear.dim(), at, stride).filter(|other| *other != at);
+    let (all, yes) = others.fold((0, 0), |(all, yes), other| {
+        (all + 1, yes + usize::from(clear[other]))
+    });
+    8 * yes >= 7 * all
+}
+
+/// True unless most of the independent windows about one are refused support.
+fn in_company(support: &Array2<Support>, at: (usize, usize), stride: (usize, usize)) -> bool {
     let (mut given, mut refused) = (0, 0);
-    for jj in about(j, stride.0, rows) {
-        for ii in about(i, stride.1, columns) {
-            match support[(jj, ii)] {
-                _ if (jj, ii) == (j, i) => {}
-                Support::Given => given += 1,
-                Support::Refused => refused += 1,
-                Support::Silent => {}
-            }
+    for other in about(support.dim(), at, stride).filter(|other| *other != at) {
+        match support[other] {
+            Support::Given => given += 1,
+            Support::Refused => refused += 1,
+            Support::Silent => {}
         }
     }
     given >= refused

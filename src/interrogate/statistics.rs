@@ -20,8 +20,8 @@ const RING: usize = 2 * REACH + 2;
 
 /// Room for the sums of one window batch.
 pub(crate) struct StatisticsScratch {
-    /// Second windows smoothed; a window.
-    soft: Vec<Lanes>,
+    /// Both windows smoothed.
+    soft: [Vec<Lanes>; 2],
     /// Contributions, and their sums along the row: [`RING`] rows each.
     lean: Vec<Lanes>,
     along: Vec<Lanes>,
@@ -34,7 +34,7 @@ impl StatisticsScratch {
     pub fn new(pixels: usize, width: usize) -> Self {
         let room = |cells: usize| vec![[0.0; LANES]; cells];
         Self {
-            soft: room(pixels),
+            soft: [room(pixels), room(pixels)],
             lean: room(RING * width),
             along: room(RING * width),
             boxes: room(width),
@@ -50,59 +50,65 @@ pub(crate) fn lean_variance(
     width: usize,
     scratch: &mut StatisticsScratch,
 ) -> [Lanes; 2] {
-    soften(b, width, &mut scratch.soft);
+    let [soft_a, soft_b] = &mut scratch.soft;
+    soften(a, width, soft_a);
+    soften(b, width, soft_b);
     [
-        spread::<0, 1>(a, width, scratch),
-        spread::<1, 0>(a, width, scratch),
+        spread::<0, 1>(width, scratch),
+        spread::<1, 0>(width, scratch),
     ]
 }
 
-/// Smooths as the peak is smoothed: (1, 6, 1)/8 along rows and columns, edges left as they are.
+/// Weights of a pixel and of the next in [`soften`]: (1 ± √½)/2, the sum of whose products with
+/// themselves, one apart, and of whose squares are 1/8 and 6/8.
+const SOFT: [f32; 2] = [0.853_553_4, 0.146_446_6];
+
+/// Smooths one exposure so that the correlation of two such is smoothed as the peak is, by
+/// (1, 6, 1)/8 along rows and columns: a kernel of two px on each axis does that, being the root
+/// of the other. Both exposures must be smoothed alike, or a perfect pair would show
+/// contributions that are not noise.
 #[multiversion::multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
 fn soften(from: &[Lanes], width: usize, to: &mut [Lanes]) {
     let height = from.len() / width;
-    to[..width].copy_from_slice(&from[..width]);
-    let last = (height - 1) * width;
-    to[last..].copy_from_slice(&from[last..]);
-    for r in 1..height - 1 {
-        let [above, here, below] = [r - 1, r, r + 1].map(|r| &from[r * width..][..width]);
+    for r in 0..height {
+        let here = &from[r * width..][..width];
+        // The window ends in zeros.
+        let below = from.get((r + 1) * width..).unwrap_or_default();
         let to = &mut to[r * width..][..width];
-        (to[0], to[width - 1]) = (here[0], here[width - 1]);
-        let (mut before, mut middle) = (
-            blend(above[0], here[0], below[0]),
-            blend(above[1], here[1], below[1]),
-        );
-        for c in 1..width - 1 {
-            let after = blend(above[c + 1], here[c + 1], below[c + 1]);
-            to[c] = blend(before, middle, after);
-            (before, middle) = (middle, after);
+        let blend = |c: usize| {
+            let mut sum = [0f32; LANES];
+            let next = below.get(c).unwrap_or(&[0.0; LANES]);
+            for l in 0..LANES {
+                sum[l] = SOFT[0] * here[c][l] + SOFT[1] * next[l];
+            }
+            sum
+        };
+        let mut now = blend(0);
+        for c in 0..width {
+            let next = if c + 1 < width {
+                blend(c + 1)
+            } else {
+                [0.0; LANES]
+            };
+            for l in 0..LANES {
+                to[c][l] = SOFT[0] * now[l] + SOFT[1] * next[l];
+            }
+            now = next;
         }
     }
 }
 
-/// (1, 6, 1)/8 of three neighbours.
-#[inline(always)]
-fn blend(before: Lanes, here: Lanes, after: Lanes) -> Lanes {
-    let mut sum = [0f32; LANES];
-    for l in 0..LANES {
-        sum[l] = 0.125 * (before[l] + after[l]) + 0.75 * here[l];
-    }
-    sum
-}
-
-/// Variance, by lane, of the sum over px of a(x) b(x + d) - a(x + d) b(x), b smoothed and
-/// d = ([`RIGHT`], `DOWN`) px: each contribution less the mean of all times the same within
+/// Variance, by lane, of the sum over px of a(x) b(x + d) - a(x + d) b(x), the windows smoothed
+/// and d = (`RIGHT`, `DOWN`) px: each contribution less the mean of all times the same within
 /// [`REACH`] of it, summed.
 ///
 /// With c the contributions, m their mean and n the px within reach of each, that is
 /// sum c box(c) - 2 m sum n c + m² sum n, so that c is made once and never stored whole.
 #[multiversion::multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
 fn spread<const DOWN: usize, const RIGHT: usize>(
-    a: &[Lanes],
     width: usize,
     scratch: &mut StatisticsScratch,
 ) -> Lanes {
-    let (rows, columns) = (a.len() / width - DOWN, width - RIGHT);
     let within = |i: usize, n: usize| (i + REACH).min(n - 1) - i.saturating_sub(REACH) + 1;
     let StatisticsScratch {
         soft,
@@ -110,6 +116,8 @@ fn spread<const DOWN: usize, const RIGHT: usize>(
         along,
         boxes,
     } = scratch;
+    let [a, b] = soft;
+    let (rows, columns) = (a.len() / width - DOWN, width - RIGHT);
     let boxes = &mut boxes[..columns];
     boxes.fill([0.0; LANES]);
     let place = |r: usize| (r % RING) * width;
@@ -118,7 +126,7 @@ fn spread<const DOWN: usize, const RIGHT: usize>(
         if r < rows {
             let (here, there) = (r * width, (r + DOWN) * width + RIGHT);
             let (a0, a1) = (&a[here..][..columns], &a[there..][..columns]);
-            let (b0, b1) = (&soft[here..][..columns], &soft[there..][..columns]);
+            let (b0, b1) = (&b[here..][..columns], &b[there..][..columns]);
             let lean = &mut lean[place(r)..][..columns];
             let n_row = within(r, rows) as f32;
             for c in 0..columns {
@@ -200,8 +208,8 @@ pub(crate) fn variance(lean: f32, top: f32, side: f32, pixels: usize) -> Option<
 
 /// Root of the mean variance over the cells up to `reach` (rows, columns) away that have one.
 ///
-/// One window holds too few particles to say its own variance well; half a window further on
-/// every side it is hardly another flow.
+/// One window holds too few particles to say its own variance well, and those within half a
+/// window share most of them; a little further on every side it is hardly another flow.
 pub(crate) fn pooled(
     variances: &Array2<Option<f64>>,
     (j, i): (usize, usize),
@@ -236,7 +244,7 @@ mod tests {
             });
             let mut scratch = StatisticsScratch::new(width * height, width);
             let fast = lean_variance(&windows[0], &windows[1], width, &mut scratch);
-            let soft = &scratch.soft;
+            let [a, b] = &scratch.soft;
             for (axis, (down, right)) in [(0, 1), (1, 0)].into_iter().enumerate() {
                 let (rows, columns) = (height - down, width - right);
                 for l in [0, 7, LANES - 1] {
@@ -244,7 +252,6 @@ mod tests {
                         .map(|i| {
                             let here = i / columns * width + i % columns;
                             let there = here + down * width + right;
-                            let (a, b) = (&windows[0], soft);
                             f64::from(a[here][l] * b[there][l] - a[there][l] * b[here][l])
                         })
                         .collect();

@@ -12,7 +12,7 @@ use super::super::options::Optional;
 use super::vortex::FoundEddies;
 use crate::field::{Status, VectorField};
 use crate::frames::{Pair, Recording};
-use crate::interrogate::{Plan, PlanOptions, interrogate};
+use crate::interrogate::{Plan, PlanOptions, correlate_together, interrogate};
 use crate::series::{Series, default_name, interrogate_series};
 use crate::vortex::{EddyOptions, find_eddies};
 
@@ -28,6 +28,10 @@ crate::option_keys! {
             "Displacement noise the median test tolerates.";
         least_lit: "number", "fraction", "0.5",
             "Share of a window that must lie inside the image and outside masks.";
+        flatten_px: "whole number", "px", "25",
+            "Side of the square over which the lighting is made even first: local mean and contrast are taken out; 0 for none, else 9 to 255.";
+        join_neighbours: "true or false", "", "false",
+            "In every pass but the last, average the correlation plane of a window with those half a window away: for thin seeding.";
     }
 }
 
@@ -156,6 +160,25 @@ pub(super) fn records(room: &mut Room) {
                 Ok::<_, Fault>(all)
             },
         );
+    room.method::<Recording>("correlate_together")
+        .about(
+            "One vector field of a steady flow from all pairs: their correlation planes are summed \
+             window by window before the peaks are read.",
+        )
+        .words("ensemble average mean steady sum correlation thin seeding sparse")
+        .input("plan", "", "how to do it; left out, the default plan")
+        .unit("px/frame, or mm/s for a calibrated recording")
+        .errors("there is no pair, the pairs differ in size or calibration, or a frame cannot be read")
+        .source("Meinhart, Wereley & Santiago 2000 (from memory)")
+        .example(
+            "let flow = uniform(#{ u_px_per_frame: 2, v_px_per_frame: 0 });\nlet thin = |seed| flow.pair(#{ width_px: 128, height_px: 128, seeding_per_px2: 0.002, seed: seed });\nlet all = recording([thin.call(1), thin.call(2), thin.call(3), thin.call(4), thin.call(5), thin.call(6)]);\nprint(decimals(all.correlate_together(plan(#{ windows_px: [32, 32], overlap: 0.5 })).u.mean().value, 1));",
+            "2.0",
+        )
+        .does(|recording: &Recording, plan: Option<Arc<Plan>>, call: Call| {
+            let label = format!("{} pairs together", recording.len());
+            let field = correlate_together(recording.pairs(), &*given(plan)?, &label, &call.task());
+            Ok::<_, Fault>(field?)
+        });
     of_series(room);
     super::plane::records(room);
 }

@@ -93,7 +93,7 @@ pub(super) fn records(room: &mut Room) {
         .source("Scarano 2002; Wereley & Meinhart 2001")
         .example(
             with_a_plane!("c"),
-            "correlation plane of 32 x 32 px about (63.5, 63.5) px: peak 0.939 at (3.265, -1.159) px/frame, 3.61 times the second, noise 0.05",
+            "correlation plane of 32 x 32 px about (63.5, 63.5) px: peak 0.939 at (3.263, -1.158) px/frame, 3.88 times the second, noise 0.05",
         )
         .does(
             |pair: &Pair, x: Length, y: Length, plan: Option<Arc<Plan>>, call: Call| {
