@@ -286,8 +286,7 @@ fn range(health: &Health) -> Option<Finding> {
 }
 
 fn kept(health: &Health) -> Option<Finding> {
-    let kept = health.kept()?;
-    let lost = Measured::exact(1.0, kept.unit()).minus(&kept).ok()?;
+    let lost = health.lost()?;
     let judged = match lost.value() {
         l if l > 0.7 => (
             Verdict::Warning,

@@ -59,6 +59,18 @@ pub struct PairHealth {
     pub measured: f64,
 }
 
+impl PairHealth {
+    /// Share of the particle pattern that is not in both exposures.
+    pub fn lost(&self) -> Option<Measured> {
+        self.kept.as_ref().and_then(lost)
+    }
+}
+
+/// One less the share that is kept.
+fn lost(kept: &Measured) -> Option<Measured> {
+    Measured::exact(1.0, kept.unit()).minus(kept).ok()
+}
+
 /// What is said of a recording, or of one pair, under a plan.
 #[derive(Clone, Debug)]
 pub struct Health {
@@ -256,6 +268,11 @@ impl Health {
     /// Share of the particle pattern that both exposures of a pair have.
     pub fn kept(&self) -> Option<Measured> {
         self.mean(|pair| pair.kept.clone())
+    }
+
+    /// Share that is not in both.
+    pub fn lost(&self) -> Option<Measured> {
+        self.kept().as_ref().and_then(lost)
     }
 
     /// Share of the pixels that are saturated.
