@@ -9,7 +9,6 @@
 //! | [`task`] | the handle through which long work reports progress and is cancelled |
 //! | [`frames`] | images in: reading, pairing, calibration, masks |
 //! | [`interrogate`] | image pairs to displacement: windows, transforms, peaks, deformation, validation |
-//! | [`advice`] | what a recording's images say of themselves, and the plan that fits them |
 //! | [`series`] | the fields of a recording on disk: written, resumed, read back |
 //! | [`field`] | grid, vector and scalar fields, gradients, sampling |
 //! | [`vortex`] | finding eddies, their boundaries and sizes |
@@ -32,7 +31,6 @@
 //! integer coordinates; an uncalibrated field is in px and frames with its origin at the centre
 //! of the bottom-left pixel.
 
-pub mod advice;
 pub mod cli;
 pub mod field;
 pub mod figure;

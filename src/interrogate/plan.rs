@@ -111,7 +111,6 @@ pub struct Plan {
     options: PlanOptions,
     response: Arc<Response>,
     errors: ErrorModel,
-    reasons: Arc<[String]>,
 }
 
 impl Plan {
@@ -173,21 +172,7 @@ impl Plan {
             options: options.clone(),
             errors: response.error_model(last),
             response: Arc::new(response),
-            reasons: Arc::default(),
         })
-    }
-
-    /// The same plan with a sentence for each of the choices in it.
-    pub fn with_reasons(self, reasons: Vec<String>) -> Self {
-        Self {
-            reasons: reasons.into(),
-            ..self
-        }
-    }
-
-    /// Why the plan is as it is; empty for one that was written by hand.
-    pub fn reasons(&self) -> &[String] {
-        &self.reasons
     }
 
     /// The options the plan was made from.

@@ -9,7 +9,6 @@ mod cell;
 mod column;
 mod csv;
 mod eddies;
-mod health;
 mod peaks;
 mod show;
 #[allow(clippy::module_inception)]
@@ -18,6 +17,5 @@ mod table;
 pub use cell::Cell;
 pub use column::Column;
 pub use eddies::{eddies, eddies_of_each};
-pub use health::{health_findings, health_of_pairs};
 pub use peaks::plane_peaks;
 pub use table::{Table, TableError};

@@ -3,7 +3,6 @@
 //! Each file has one function that writes the room's records, documentation and closure
 //! together. Nothing is computed here: a closure calls a kernel and hands its answer on.
 
-mod advice;
 mod core;
 mod field;
 mod field_arithmetic;
@@ -26,11 +25,10 @@ use super::draft::Room;
 type Write = fn(&mut Room);
 
 /// Every room with the function that writes its records, in the order help lists them.
-pub(super) const ROOMS: [(&str, Write); 13] = [
+pub(super) const ROOMS: [(&str, Write); 12] = [
     ("recordings", frames::records),
     ("masks", mask::records),
     ("interrogation", interrogate::records),
-    ("health and advice", advice::records),
     ("fields", field::records),
     ("eddies", vortex::records),
     ("tables", table::records),
