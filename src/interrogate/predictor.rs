@@ -153,6 +153,10 @@ impl Runs {
     }
 }
 
+#[allow(
+    clippy::needless_range_loop,
+    reason = "a loop over lanes of several arrays: the form that vectorises whole"
+)]
 #[multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
 fn read_runs(
     runs: &[(usize, Range<usize>)],

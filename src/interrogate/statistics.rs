@@ -67,6 +67,10 @@ const SOFT: [f32; 2] = [0.853_553_4, 0.146_446_6];
 /// (1, 6, 1)/8 along rows and columns: a kernel of two px on each axis does that, being the root
 /// of the other. Both exposures must be smoothed alike, or a perfect pair would show
 /// contributions that are not noise.
+#[allow(
+    clippy::needless_range_loop,
+    reason = "the column counts in four rows at once"
+)]
 #[multiversion::multiversion(targets("x86_64+avx512f+avx512dq+avx512vl+fma", "x86_64+avx2+fma"))]
 fn soften(from: &[Lanes], width: usize, to: &mut [Lanes]) {
     let height = from.len() / width;
